@@ -1,0 +1,77 @@
+//! `fit`.
+
+use super::Ending;
+use super::args::FitArgs;
+use super::run::fit_study;
+use super::terminal::{Terminal, print};
+use crate::Error;
+use crate::config::{TableFormat, check_replicates, read_study};
+use crate::io::delimited::TextOptions;
+use crate::io::table::{PairColumns, PairOptions, read_pairs};
+use crate::io::time_text::TimeUnit;
+use crate::pipeline;
+use crate::report::relation_text;
+use crate::science::level_wind::{Loss, Options};
+
+pub(super) fn fit(args: &FitArgs, terminal: &Terminal) -> Result<(), Ending> {
+    if let Some(path) = &args.study {
+        let mut study = read_study(path)?;
+        set(args, &mut study.relation.options)?;
+        if let Some(output) = &args.output {
+            study.output.clone_from(output);
+        }
+        return fit_study(&study, args.json, terminal);
+    }
+    let Some(table) = &args.matchups else { return Ok(()) };
+    let mut options = Options::default();
+    set(args, &mut options)?;
+    let columns = PairColumns {
+        time: args.time_column.clone(),
+        wind_speed: args.wind_column.clone(),
+        level: args.level_column.clone(),
+        site: args.site_column.clone(),
+        band: args.band_column.clone(),
+        deployment: args.deployment_column.clone(),
+    };
+    let time_unit = match &args.time_unit {
+        None => None,
+        Some(name) => Some(TimeUnit::from_name(name).ok_or_else(|| {
+            let expected = "s, ms, us, ns, spreadsheet_days or day_number";
+            Error::CommandLine(format!("--time-unit {name} is not known; expected {expected}"))
+        })?),
+    };
+    let text = TextOptions {
+        delimiter: args.delimiter.clone(),
+        decimal_mark: args.decimal_mark.clone(),
+        encoding: args.encoding.clone(),
+        comment: None,
+    };
+    let pairs = read_pairs(table, &PairOptions { columns, time_unit, text })?;
+    for note in &pairs.notes {
+        terminal.remark(note);
+    }
+    let fitted = pipeline::fit_pairs(&pairs, &options);
+    if let Some(folder) = &args.output {
+        pipeline::make_folder(folder)?;
+        pipeline::write_relations(&fitted, &[TableFormat::Parquet, TableFormat::Csv], folder)?;
+    }
+    let text = if args.json { pipeline::relations_json(&fitted) } else { relation_text(&fitted) };
+    print(&text).map_err(Ending::Exit)
+}
+
+/// The command line goes before the study file.
+fn set(args: &FitArgs, options: &mut Options) -> Result<(), Ending> {
+    if let Some(number) = args.replicates {
+        options.replicates = check_replicates(number as usize).map_err(Error::CommandLine)?;
+    }
+    if let Some(seed) = args.seed {
+        options.seed = seed;
+    }
+    match args.loss.as_deref() {
+        Some("tukey") => options.loss = Loss::Tukey,
+        Some("huber") => options.loss = Loss::Huber,
+        Some("least_squares") => options.loss = Loss::LeastSquares,
+        _ => {}
+    }
+    Ok(())
+}

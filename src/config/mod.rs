@@ -1,0 +1,22 @@
+//! The study file: strict TOML sections, then one step that checks them against each other.
+//!
+//! Everything that the input files' metadata states is read from them; the study file adds what they leave out or get
+//! wrong. Unknown keys are errors. Paths are relative to the study file. Every error names the file and the line.
+
+mod error;
+mod fit;
+mod levels;
+mod matching;
+mod place;
+mod set;
+mod sites;
+mod study;
+mod wind;
+
+pub use error::StudyError;
+pub use fit::{RelationSection, check_replicates};
+pub use levels::{LevelsInput, level_options_from};
+pub use matching::{MatchSection, WindowSpeed};
+pub use sites::SitesInput;
+pub use study::{ReportSection, Study, TableFormat, read_study};
+pub use wind::{WindInput, WindOrigin, wind_options_from};

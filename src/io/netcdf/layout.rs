@@ -1,0 +1,303 @@
+//! How a field lies in its variable: which dimension is time, row, column, and what to fix of the others.
+
+use super::error::NetcdfError;
+use super::header::{Header, Variable};
+use super::read::Reader;
+use super::time_axis::looks_like_time;
+use super::wind_options::WindOptions;
+use crate::model::{Grid, Layout};
+use crate::numerics::axis::Axis;
+
+/// The places of the dimensions of a field.
+#[derive(Debug, Clone)]
+pub(super) struct Placement {
+    pub(super) step: Option<usize>,
+    pub(super) row: Option<usize>,
+    pub(super) column: Option<usize>,
+    /// Indices of the other dimensions; several alternatives are tried in order until one has a value (final versions before
+    /// preliminary ones).
+    pub(super) fixed: Vec<Vec<u64>>,
+    /// Name of the time variable.
+    pub(super) time: Option<String>,
+    pub(super) grid: Grid,
+    pub(super) height_m: Option<f64>,
+    pub(super) notes: Vec<String>,
+}
+
+/// What a dimension is.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Axes {
+    Time,
+    Latitude,
+    Longitude,
+    Height,
+    Member,
+    Version,
+    Lead,
+    Other,
+}
+
+fn lower(text: Option<&str>) -> String {
+    text.unwrap_or_default().to_lowercase()
+}
+
+/// What a dimension is, from its coordinate variable and its name.
+fn axis_of(header: &Header, dimension: &str, options: &WindOptions) -> Axes {
+    let is = |option: &Option<String>| option.as_deref() == Some(dimension);
+    if is(&options.time) {
+        return Axes::Time;
+    }
+    if is(&options.latitude) {
+        return Axes::Latitude;
+    }
+    if is(&options.longitude) {
+        return Axes::Longitude;
+    }
+    if let Some(variable) = header.variable(dimension) {
+        let standard = lower(variable.text("standard_name"));
+        let units = lower(variable.text("units"));
+        match standard.as_str() {
+            "time" => return Axes::Time,
+            "latitude" => return Axes::Latitude,
+            "longitude" => return Axes::Longitude,
+            "height" => return Axes::Height,
+            "realization" => return Axes::Member,
+            "forecast_period" => return Axes::Lead,
+            _ => {}
+        }
+        if looks_like_time(variable) {
+            return Axes::Time;
+        }
+        match units.as_str() {
+            "degrees_north" | "degree_north" | "degrees_n" | "degree_n" | "degreen" | "degreesn" => {
+                return Axes::Latitude;
+            }
+            "degrees_east" | "degree_east" | "degrees_e" | "degree_e" | "degreee" | "degreese" => {
+                return Axes::Longitude;
+            }
+            _ => {}
+        }
+        if lower(variable.text("axis")) == "t" {
+            return Axes::Time;
+        }
+    }
+    match dimension.to_lowercase().as_str() {
+        "time" | "valid_time" | "t" | "timestep" | "times" | "date" => Axes::Time,
+        "lat" | "latitude" | "nlat" | "lats" => Axes::Latitude,
+        "lon" | "longitude" | "nlon" | "lons" | "long" => Axes::Longitude,
+        "height" | "heightaboveground" | "level" | "lev" | "z" | "altitude" | "height_10m" => Axes::Height,
+        "number" | "member" | "realization" | "ensemble" | "ens" => Axes::Member,
+        "expver" => Axes::Version,
+        "step" | "lead_time" | "leadtime" | "forecast_period" => Axes::Lead,
+        _ => Axes::Other,
+    }
+}
+
+/// Finds the placement of a field.
+pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOptions) -> Result<Placement, NetcdfError> {
+    let header = &reader.header;
+    let refuse =
+        |problem: String| NetcdfError::Variable { path: header.path.clone(), variable: variable.name.clone(), problem };
+    let names = header.dimension_names(variable);
+    let shape = header.shape(variable);
+    let mut places = [None; 3];
+    let mut fixed = vec![vec![0_u64; names.len()]];
+    let mut notes = Vec::new();
+    let mut height_m = scalar(reader, variable, "height").or_else(|| super::roles::height_in_name_m(variable));
+    for (place, name) in names.iter().enumerate() {
+        let axis = axis_of(header, name, options);
+        let wanted = match axis {
+            Axes::Time => Some(0),
+            Axes::Latitude => Some(1),
+            Axes::Longitude => Some(2),
+            _ => None,
+        };
+        if let Some(wanted) = wanted {
+            if places[wanted].is_some() {
+                return Err(refuse(format!(
+                    "two of its dimensions ({}) could be the same axis; set `wind.time`, `wind.latitude`, `wind.longitude`",
+                    names.join(", ")
+                )));
+            }
+            places[wanted] = Some(place);
+            continue;
+        }
+        let values = || -> Result<Vec<f64>, NetcdfError> {
+            match header.variable(name) {
+                Some(coordinate) if coordinate.number_type().is_some() => reader.all(coordinate),
+                _ => Ok((0..shape[place]).map(|index| index as f64).collect()),
+            }
+        };
+        let mut choose = |chosen: Vec<u64>| {
+            fixed = chosen
+                .iter()
+                .flat_map(|index| {
+                    fixed.iter().map(|indices| {
+                        let mut indices = indices.clone();
+                        indices[place] = *index;
+                        indices
+                    })
+                })
+                .collect();
+        };
+        match (axis, shape[place]) {
+            (Axes::Height, 1) => {
+                height_m = values()?.first().copied().filter(|_| header.variable(name).is_some()).or(height_m);
+            }
+            (_, 1) => {}
+            (Axes::Height, _) => {
+                let heights = values()?;
+                let wanted_m = options.height_m.unwrap_or(10.0);
+                let Some(index) = heights.iter().position(|height| (height - wanted_m).abs() < 1e-6) else {
+                    return Err(refuse(format!(
+                        "it has the heights {heights:?} m, none of them {wanted_m} m (set `wind.height_m`)"
+                    )));
+                };
+                height_m = Some(wanted_m);
+                choose(vec![index as u64]);
+            }
+            (Axes::Member, count) => {
+                let members = values()?;
+                let Some(member) = options.member else {
+                    return Err(refuse(format!(
+                        "it has {count} ensemble members ({} to {}); set `wind.member`",
+                        members[0],
+                        members[members.len() - 1]
+                    )));
+                };
+                let Some(index) = members.iter().position(|value| (value - member as f64).abs() < 1e-6) else {
+                    return Err(refuse(format!("it has no member {member}; members are {members:?} (`wind.member`)")));
+                };
+                choose(vec![index as u64]);
+            }
+            (Axes::Version, count) => {
+                // Archives number final data 1 and preliminary data 5: the smaller goes first.
+                let versions = values()?;
+                let mut order: Vec<u64> = (0..count).collect();
+                order.sort_by(|a, b| versions[*a as usize].total_cmp(&versions[*b as usize]));
+                notes.push(format!(
+                    "variable `{}`: final values go before preliminary ones along `{name}`",
+                    variable.name
+                ));
+                choose(order);
+            }
+            (Axes::Lead, count) => {
+                return Err(refuse(format!(
+                    "it is a forecast with {count} lead times along `{name}`, whose valid times overlap; choose one lead time a valid time first"
+                )));
+            }
+            (_, count) => {
+                return Err(refuse(layout_problem(header, variable, name, count)));
+            }
+        }
+    }
+    let [step, row, column] = places;
+    let time = step.map(|place| names[place].to_owned());
+    let grid = grid(reader, variable, &names, row, column, options)?;
+    Ok(Placement { step, row, column, fixed, time, grid, height_m, notes })
+}
+
+/// Why a field with a further dimension cannot be sampled.
+fn layout_problem(header: &Header, variable: &Variable, dimension: &str, count: u64) -> String {
+    let of_dimension: Vec<&Variable> = header
+        .variables
+        .iter()
+        .filter(|other| {
+            matches!(lower(other.text("standard_name")).as_str(), "latitude" | "longitude")
+                || matches!(
+                    other.name.to_lowercase().as_str(),
+                    "lat" | "lon" | "latitude" | "longitude" | "xlat" | "xlong"
+                )
+        })
+        .collect();
+    let ranks: Vec<usize> = of_dimension.iter().map(|other| other.dimensions.len()).collect();
+    let mapping = variable.text("grid_mapping").and_then(|name| header.variable(name));
+    let mapping = mapping.and_then(|mapping| mapping.text("grid_mapping_name"));
+    let layout = match mapping {
+        Some(name) if name.contains("rotated") => Some(Layout::RotatedPole),
+        Some(name) if name != "latitude_longitude" => Some(Layout::Projected),
+        _ if ranks.contains(&2) => Some(Layout::Curvilinear),
+        _ if ranks.contains(&1)
+            && of_dimension.iter().any(|other| header.dimension_names(other).contains(&dimension)) =>
+        {
+            let name = dimension.to_lowercase();
+            Some(if name.contains("stat") || name.contains("site") { Layout::Stations } else { Layout::Nodes })
+        }
+        _ => None,
+    };
+    match layout {
+        Some(layout) => {
+            format!("it lies on a {}, which is not sampled yet; expected latitude and longitude as axes", layout.name())
+        }
+        None => format!(
+            "its dimension `{dimension}` has {count} values and is neither time, latitude nor longitude (set `wind.time`, `wind.latitude` or `wind.longitude`, or select one of them first)"
+        ),
+    }
+}
+
+/// A scalar coordinate of a variable.
+fn scalar(reader: &Reader, variable: &Variable, standard_name: &str) -> Option<f64> {
+    let names = variable.text("coordinates")?;
+    names.split_whitespace().find_map(|name| {
+        let coordinate = reader.header.variable(name)?;
+        let count: u64 = reader.header.shape(coordinate).iter().product();
+        (coordinate.text("standard_name") == Some(standard_name) && count == 1)
+            .then(|| reader.all(coordinate).ok()?.first().copied())?
+    })
+}
+
+fn grid(
+    reader: &Reader,
+    variable: &Variable,
+    names: &[&str],
+    row: Option<usize>,
+    column: Option<usize>,
+    options: &WindOptions,
+) -> Result<Grid, NetcdfError> {
+    let header = &reader.header;
+    let values = |place: Option<usize>,
+                  named: &Option<String>,
+                  standard: &str,
+                  short: &[&str]|
+     -> Result<(String, Vec<f64>), NetcdfError> {
+        let name = match (place, named) {
+            (_, Some(named)) => named.clone(),
+            (Some(place), None) => names[place].to_owned(),
+            (None, None) => {
+                let found = header.variables.iter().find(|other| {
+                    other.text("standard_name") == Some(standard) || short.contains(&other.name.to_lowercase().as_str())
+                });
+                found.map_or_else(|| standard.to_owned(), |found| found.name.clone())
+            }
+        };
+        let coordinate =
+            header.variable(&name).filter(|coordinate| coordinate.dimensions.len() <= 1).ok_or_else(|| {
+                NetcdfError::Variable {
+                    path: header.path.clone(),
+                    variable: variable.name.clone(),
+                    problem: format!(
+                        "there is no one-dimensional {standard} variable `{name}` for it (set `wind.{standard}`)"
+                    ),
+                }
+            })?;
+        Ok((name, reader.all(coordinate)?))
+    };
+    let (latitude_name, latitudes) = values(row, &options.latitude, "latitude", &["lat", "latitude"])?;
+    let (longitude_name, longitudes) = values(column, &options.longitude, "longitude", &["lon", "longitude"])?;
+    let wrong = |name: &str, error: crate::numerics::axis::AxisError| NetcdfError::Variable {
+        path: header.path.clone(),
+        variable: name.to_owned(),
+        problem: format!("it is no axis: {error}"),
+    };
+    if let Some(value) = latitudes.iter().find(|value| value.abs() > 90.001) {
+        return Err(NetcdfError::Variable {
+            path: header.path.clone(),
+            variable: latitude_name,
+            problem: format!("it has the value {value}; expected latitudes of -90 to 90 degrees"),
+        });
+    }
+    Ok(Grid {
+        latitude: Axis::linear(&latitudes).map_err(|error| wrong(&latitude_name, error))?,
+        longitude: Axis::longitude(&longitudes).map_err(|error| wrong(&longitude_name, error))?,
+    })
+}

@@ -1,0 +1,21 @@
+//! Gridded fields in NetCDF: classic files by our own parser, NetCDF-4 through its index and our own decoding.
+//!
+//! Headers are read once; after that values come by positioned reads in any thread, outside the libraries' lock.
+
+mod calendar;
+mod classic;
+mod error;
+mod hdf5;
+mod header;
+mod layout;
+mod packing;
+mod read;
+mod roles;
+mod sniff;
+mod time_axis;
+mod wind;
+mod wind_options;
+
+pub use error::NetcdfError;
+pub use wind::{WindKind, WindSource, open_wind};
+pub use wind_options::{DirectionSense, WindOptions};

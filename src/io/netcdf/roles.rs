@@ -1,0 +1,158 @@
+//! Which variable is which: by standard name, then by units and meaning, then by the short names of the trade.
+
+use super::error::NetcdfError;
+use super::header::{Header, Variable};
+use super::time_axis::looks_like_time;
+use super::wind_options::WindOptions;
+
+/// A quantity that is looked for.
+pub(super) struct Role {
+    pub(super) wanted: &'static str,
+    pub(super) key: &'static str,
+    pub(super) standard_names: &'static [&'static str],
+    pub(super) short_names: &'static [&'static str],
+    /// Words of a long name, all of which must be there.
+    pub(super) long_words: &'static [&'static str],
+}
+
+pub(super) const EASTWARD: Role = Role {
+    wanted: "the eastward wind",
+    key: "wind.eastward",
+    standard_names: &["eastward_wind", "x_wind"],
+    short_names: &[
+        "u10",
+        "10u",
+        "u10m",
+        "u10n",
+        "uas",
+        "uwnd",
+        "ugrd",
+        "ugrd10m",
+        "ugrd_10maboveground",
+        "xwnd",
+        "u_10m",
+        "u",
+        "uwind",
+    ],
+    long_words: &["10 metre u wind"],
+};
+pub(super) const NORTHWARD: Role = Role {
+    wanted: "the northward wind",
+    key: "wind.northward",
+    standard_names: &["northward_wind", "y_wind"],
+    short_names: &[
+        "v10",
+        "10v",
+        "v10m",
+        "v10n",
+        "vas",
+        "vwnd",
+        "vgrd",
+        "vgrd10m",
+        "vgrd_10maboveground",
+        "ywnd",
+        "v_10m",
+        "v",
+        "vwind",
+    ],
+    long_words: &["10 metre v wind"],
+};
+pub(super) const SPEED: Role = Role {
+    wanted: "the wind speed",
+    key: "wind.speed",
+    standard_names: &["wind_speed"],
+    short_names: &["wspd", "si10", "10si", "ws10", "wind", "sfcwind", "wind_speed", "windspeed", "ff", "wnd"],
+    long_words: &["wind speed"],
+};
+pub(super) const DIRECTION: Role = Role {
+    wanted: "the wind direction",
+    key: "wind.direction",
+    standard_names: &["wind_from_direction", "wind_to_direction"],
+    short_names: &["wdir", "wd10", "wind_direction", "winddir", "dd", "wnddir"],
+    long_words: &["wind", "direction"],
+};
+
+/// Variables that could be a wind: numbers with at least a time or two dimensions, no coordinates.
+fn fields(header: &Header) -> impl Iterator<Item = &Variable> {
+    header.variables.iter().filter(|variable| {
+        variable.number_type().is_some()
+            && !variable.dimensions.is_empty()
+            && (variable.dimensions.len() != 1 || header.dimensions[variable.dimensions[0]].name != variable.name)
+            && !looks_like_time(variable)
+    })
+}
+
+/// Names of the variables that could be a wind, for messages.
+pub(super) fn candidates(header: &Header) -> String {
+    let names: Vec<&str> = fields(header).map(|variable| variable.name.as_str()).collect();
+    if names.is_empty() { "none".to_owned() } else { names.join(", ") }
+}
+
+impl Role {
+    /// The variable of this role in a file, if there is one.
+    pub(super) fn find<'a>(
+        &self,
+        header: &'a Header,
+        named: Option<&str>,
+        options: &WindOptions,
+    ) -> Result<Option<&'a Variable>, NetcdfError> {
+        if let Some(name) = named {
+            return Ok(header.variable(name));
+        }
+        let standard: Vec<&Variable> = fields(header)
+            .filter(|variable| variable.text("standard_name").is_some_and(|name| self.standard_names.contains(&name)))
+            .collect();
+        let found = if standard.is_empty() {
+            fields(header)
+                .filter(|variable| {
+                    let name = variable.name.to_lowercase();
+                    let long = variable.text("long_name").unwrap_or_default().to_lowercase();
+                    self.short_names.contains(&name.as_str())
+                        || (!long.is_empty() && self.long_words.iter().all(|word| long.contains(word)))
+                })
+                .collect()
+        } else {
+            standard
+        };
+        match found[..] {
+            [] => Ok(None),
+            [one] => Ok(Some(one)),
+            _ => self.of_height(header, &found, options).map(Some),
+        }
+    }
+
+    /// Of several variables the one at the height that is wanted, 10 m unless the study says another.
+    fn of_height<'a>(
+        &self,
+        header: &Header,
+        found: &[&'a Variable],
+        options: &WindOptions,
+    ) -> Result<&'a Variable, NetcdfError> {
+        let wanted_m = options.height_m.unwrap_or(10.0);
+        let at: Vec<&Variable> =
+            found.iter().copied().filter(|variable| height_in_name_m(variable) == Some(wanted_m)).collect();
+        if let [one] = at[..] {
+            return Ok(one);
+        }
+        let names: Vec<&str> = found.iter().map(|variable| variable.name.as_str()).collect();
+        Err(NetcdfError::NoVariable {
+            path: header.path.clone(),
+            wanted: self.wanted,
+            candidates: names.join(", "),
+            key: self.key,
+        })
+    }
+}
+
+/// The height that a variable's name or long name carries: u10 is at 10 m, "100 metre U wind component" at 100 m.
+pub(super) fn height_in_name_m(variable: &Variable) -> Option<f64> {
+    let long = variable.text("long_name").unwrap_or_default().to_lowercase();
+    let first = long.split([' ', '_', '-']).next().unwrap_or_default();
+    let says_metres = ["metre", "meter", " m "].iter().any(|word| long.contains(word));
+    if let (Ok(height), true) = (first.trim_end_matches('m').parse(), says_metres) {
+        return Some(height);
+    }
+    let digits: String =
+        variable.name.chars().skip_while(|c| !c.is_ascii_digit()).take_while(char::is_ascii_digit).collect();
+    digits.parse().ok()
+}

@@ -1,0 +1,507 @@
+//! A wind source: one or many NetCDF files, understood from their headers, read block by block.
+
+use super::error::NetcdfError;
+use super::header::{Header, Storage, Variable};
+use super::layout::{Placement, placement};
+use super::packing::Packing;
+use super::read::{Reader, Wanted};
+use super::roles::{DIRECTION, EASTWARD, NORTHWARD, Role, SPEED, candidates};
+use super::sniff::{Format, sniff};
+use super::time_axis;
+use super::wind_options::{DirectionSense, WindOptions, speed_unit_m_s};
+use super::{classic, hdf5};
+use crate::model::{Block, FieldMeta, FieldSource, Flag, FlagSet, Grid, Layout, NodeId, NodeRequest, Slab, SourceId};
+use crate::units::Instant;
+use std::collections::BTreeMap;
+use std::path::{Path, PathBuf};
+
+/// A gap of this many usual steps is bridged where the study does not say otherwise.
+const BRIDGED_STEPS: i64 = 2;
+/// Steps of unchunked storage that are read together.
+const UNCHUNKED_STEPS: u64 = 256;
+/// Coordinates of two files are the same up to this many degrees (float32 against float64).
+const SAME_PLACE_DEG: f64 = 1e-4;
+
+/// What a source's numbers are.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum WindKind {
+    /// Components towards east and north.
+    Components,
+    /// Speed, and the direction it comes from.
+    SpeedAndDirection,
+    /// Speed alone.
+    Speed,
+}
+
+/// A component's variable in each file that has it: the file's place and the variable.
+type InFiles<'a> = Vec<(usize, &'a Variable)>;
+
+/// One variable of one file: a run of steps of one component.
+#[derive(Debug)]
+struct Part {
+    reader: usize,
+    variable: String,
+    component: usize,
+    placement: Placement,
+    packing: Packing,
+    /// For each stored step its place among the source's steps.
+    merged: Vec<Option<usize>>,
+    to_unit: f64,
+}
+
+/// Gridded wind, opened.
+#[derive(Debug)]
+pub struct WindSource {
+    meta: FieldMeta,
+    kind: WindKind,
+    readers: Vec<Reader>,
+    parts: Vec<Part>,
+    max_gap_ms: i64,
+    variables: Vec<String>,
+}
+
+/// Opens wind files and understands their headers.
+///
+/// # Errors
+/// When a file cannot be read, when a variable or unit cannot be understood (the message names the key to set), or when
+/// files do not fit together.
+pub fn open_wind(source: SourceId, files: &[PathBuf], options: &WindOptions) -> Result<WindSource, NetcdfError> {
+    if files.is_empty() {
+        return Err(NetcdfError::NoFiles);
+    }
+    let mut readers = Vec::new();
+    for path in files {
+        readers.push(Reader::open(read_header(path)?)?);
+    }
+    let (kind, found) = components(&readers, options)?;
+    let mut notes = Vec::new();
+    let mut flags = FlagSet::default();
+    let mut parts: Vec<(Part, Vec<Option<Instant>>)> = Vec::new();
+    let mut variables = Vec::new();
+    for (component, in_files) in found.iter().enumerate() {
+        for (reader, variable) in in_files {
+            let (part, steps) = part(&readers, *reader, variable, component, kind, options, &mut notes, &mut flags)?;
+            let described = format!("{} (`{}`)", component_name(kind, component), part.variable);
+            if !variables.contains(&described) {
+                variables.push(described);
+            }
+            parts.push((part, steps));
+        }
+    }
+    let (parts, steps) = merge(&readers, parts, found.len(), &mut notes);
+    if steps.is_empty() {
+        return Err(NetcdfError::Variable {
+            path: readers[0].header.path.clone(),
+            variable: parts[0].variable.clone(),
+            problem: "there is no step in time at which all components are there".to_owned(),
+        });
+    }
+    let first = &parts[0];
+    let grid = first.placement.grid.clone();
+    for other in &parts[1..] {
+        if !same_grid(&grid, &other.placement.grid) {
+            return Err(NetcdfError::Disagree {
+                path: readers[other.reader].header.path.clone(),
+                other: readers[first.reader].header.path.clone(),
+                problem: format!("variable `{}` lies on another grid", other.variable),
+            });
+        }
+    }
+    let max_gap_ms = options.max_gap_ms.unwrap_or_else(|| BRIDGED_STEPS * usual_step_ms(&steps));
+    let height_m = options.height_m.or(first.placement.height_m);
+    notes.dedup();
+    let meta = FieldMeta { source, layout: Layout::Rectilinear, grid, steps, height_m, flags, notes };
+    Ok(WindSource { meta, kind, readers, parts, max_gap_ms, variables })
+}
+
+/// Reads a file's header, whichever format it has.
+fn read_header(path: &Path) -> Result<Header, NetcdfError> {
+    match sniff(path)? {
+        Format::Classic(version) => classic::read_header(path, version),
+        Format::Hdf5 => hdf5::read_header(path),
+    }
+}
+
+/// Finds the variables of each component in all files.
+fn components<'a>(readers: &'a [Reader], options: &WindOptions) -> Result<(WindKind, Vec<InFiles<'a>>), NetcdfError> {
+    let find = |role: &Role, named: &Option<String>| -> Result<InFiles<'a>, NetcdfError> {
+        let mut found = Vec::new();
+        for (index, reader) in readers.iter().enumerate() {
+            if let Some(variable) = role.find(&reader.header, named.as_deref(), options)? {
+                found.push((index, variable));
+            }
+        }
+        match named {
+            Some(name) if found.is_empty() => Err(NetcdfError::NoSuchVariable {
+                path: readers[0].header.path.clone(),
+                name: name.clone(),
+                key: role.key,
+                found: readers[0].header.variable_names(),
+            }),
+            _ => Ok(found),
+        }
+    };
+    let wants_speed = options.speed.is_some() && options.eastward.is_none();
+    if !wants_speed {
+        let eastward = find(&EASTWARD, &options.eastward)?;
+        let northward = find(&NORTHWARD, &options.northward)?;
+        if !eastward.is_empty() && !northward.is_empty() {
+            return Ok((WindKind::Components, vec![eastward, northward]));
+        }
+        if options.eastward.is_some() || options.northward.is_some() {
+            let (role, key) =
+                if eastward.is_empty() { (EASTWARD, "wind.eastward") } else { (NORTHWARD, "wind.northward") };
+            return Err(no_variable(&readers[0], role.wanted, key));
+        }
+    }
+    let speed = find(&SPEED, &options.speed)?;
+    if speed.is_empty() {
+        return Err(no_variable(
+            &readers[0],
+            "a wind (components towards east and north, or speed)",
+            "wind.eastward` and `wind.northward`, or `wind.speed",
+        ));
+    }
+    let direction = find(&DIRECTION, &options.direction)?;
+    if direction.is_empty() {
+        return Ok((WindKind::Speed, vec![speed]));
+    }
+    Ok((WindKind::SpeedAndDirection, vec![speed, direction]))
+}
+
+fn no_variable(reader: &Reader, wanted: &'static str, key: &'static str) -> NetcdfError {
+    NetcdfError::NoVariable { path: reader.header.path.clone(), wanted, candidates: candidates(&reader.header), key }
+}
+
+fn component_name(kind: WindKind, component: usize) -> &'static str {
+    match (kind, component) {
+        (WindKind::Components, 0) => "eastward wind",
+        (WindKind::Components, _) => "northward wind",
+        (_, 0) => "wind speed",
+        (_, _) => "wind direction",
+    }
+}
+
+fn part(
+    readers: &[Reader],
+    index: usize,
+    variable: &Variable,
+    component: usize,
+    kind: WindKind,
+    options: &WindOptions,
+    notes: &mut Vec<String>,
+    flags: &mut FlagSet,
+) -> Result<(Part, Vec<Option<Instant>>), NetcdfError> {
+    let reader = &readers[index];
+    let refuse = |problem: String| NetcdfError::Variable {
+        path: reader.header.path.clone(),
+        variable: variable.name.clone(),
+        problem,
+    };
+    let is_direction = kind == WindKind::SpeedAndDirection && component == 1;
+    let units = options.units.as_deref().filter(|_| !is_direction).or_else(|| variable.text("units"));
+    let to_unit = match (is_direction, units) {
+        (false, Some(text)) => speed_unit_m_s(text).ok_or_else(|| {
+            refuse(format!(
+                "it is in `{text}`; expected a speed such as m s-1, knots or km/h (set `wind.units` to override)"
+            ))
+        })?,
+        (false, None) => {
+            return Err(refuse("it has no units; expected a speed such as m s-1 (set `wind.units`)".to_owned()));
+        }
+        (true, text) => direction_to_from_degrees(variable, text, options).map_err(refuse)?,
+    };
+    let placement = placement(reader, variable, options)?;
+    notes.extend(placement.notes.iter().cloned());
+    let packing = Packing::of(&reader.header, variable)?;
+    notes.extend(packing.notes.iter().cloned());
+    if variable.text("cell_methods").is_some_and(|methods| methods.contains("time: mean")) {
+        flags.insert(Flag::AveragedField);
+        notes.push(format!(
+            "variable `{}` holds means over time (cell_methods), not values at an instant",
+            variable.name
+        ));
+    }
+    if matches!(variable.text("standard_name"), Some("x_wind" | "y_wind")) {
+        notes.push(format!(
+            "variable `{}` is along the grid's axes; on axes of latitude and longitude that is east and north",
+            variable.name
+        ));
+    }
+    let steps = match (&placement.time, placement.step) {
+        (Some(name), Some(place)) => {
+            let name = options.time.clone().unwrap_or_else(|| name.clone());
+            let time = reader
+                .header
+                .variable(&name)
+                .filter(|time| time.number_type().is_some())
+                .ok_or_else(|| refuse(format!("there is no time variable `{name}` for it (set `wind.time`)")))?;
+            if time.dimensions.len() > 1 {
+                return Err(refuse(format!(
+                    "its time `{name}` has several dimensions (a forecast with lead times?); choose one lead time first"
+                )));
+            }
+            let axis = time_axis::decode(reader, time, options.time_units.as_deref(), options.calendar.as_deref())?;
+            notes.extend(axis.notes);
+            let count = reader.header.shape(variable)[place] as usize;
+            if axis.steps.len() != count {
+                return Err(refuse(format!("it has {count} steps, but its time `{name}` has {}", axis.steps.len())));
+            }
+            axis.steps
+        }
+        _ => return Err(refuse("it has no dimension of time (set `wind.time`)".to_owned())),
+    };
+    let part = Part {
+        reader: index,
+        variable: variable.name.clone(),
+        component,
+        placement,
+        packing,
+        merged: Vec::new(),
+        to_unit,
+    };
+    Ok((part, steps))
+}
+
+/// What turns a direction's numbers into degrees, with its sense in the sign: positive for coming-from, negative for going-to.
+fn direction_to_from_degrees(variable: &Variable, units: Option<&str>, options: &WindOptions) -> Result<f64, String> {
+    let degrees = match units.map(str::to_lowercase).as_deref() {
+        Some("degree" | "degrees" | "deg" | "degree_true" | "degrees_true" | "degt" | "°") => 1.0,
+        Some("radian" | "radians" | "rad") => 180.0 / std::f64::consts::PI,
+        Some(other) => return Err(format!("its units are `{other}`; expected degrees or radians")),
+        None => return Err("it has no units; expected degrees or radians".to_owned()),
+    };
+    let standard = variable.text("standard_name").unwrap_or_default();
+    let long = variable.text("long_name").unwrap_or_default().to_lowercase();
+    let sense = options.direction_sense.or(match standard {
+        "wind_from_direction" => Some(DirectionSense::From),
+        "wind_to_direction" => Some(DirectionSense::To),
+        _ if long.contains("from") => Some(DirectionSense::From),
+        _ if long.contains(" to ") || long.contains("toward") => Some(DirectionSense::To),
+        _ => None,
+    });
+    match sense {
+        Some(DirectionSense::From) => Ok(degrees),
+        Some(DirectionSense::To) => Ok(-degrees),
+        None => Err("nothing says whether it is where the wind comes from or goes to (set `wind.direction_sense` to \"from\" or \"to\")".to_owned()),
+    }
+}
+
+/// Brings the steps of all parts on one time line: the steps at which every component is there.
+fn merge(
+    readers: &[Reader],
+    parts: Vec<(Part, Vec<Option<Instant>>)>,
+    components: usize,
+    notes: &mut Vec<String>,
+) -> (Vec<Part>, Vec<Instant>) {
+    let mut seen: BTreeMap<Instant, Vec<usize>> = BTreeMap::new();
+    let mut unsorted = Vec::new();
+    for (part, steps) in &parts {
+        let known: Vec<Instant> = steps.iter().filter_map(|step| *step).collect();
+        if known.windows(2).any(|pair| pair[1] < pair[0]) {
+            unsorted.push(readers[part.reader].header.path.display().to_string());
+        }
+        for step in known {
+            let counts = seen.entry(step).or_insert_with(|| vec![0; components]);
+            counts[part.component] += 1;
+        }
+    }
+    unsorted.dedup();
+    for path in unsorted {
+        notes.push(format!("{path}: steps are not in order of time; they were sorted"));
+    }
+    let twice = seen.values().filter(|counts| counts.iter().any(|count| *count > 1)).count();
+    if twice > 0 {
+        notes.push(format!("{twice} steps are there more than once; the first counts, and differences are refused"));
+    }
+    let partial = seen.values().filter(|counts| counts.contains(&0)).count();
+    if partial > 0 {
+        notes.push(format!("{partial} steps lack one of the components and are left out"));
+    }
+    let steps: Vec<Instant> = seen.iter().filter(|(_, counts)| !counts.contains(&0)).map(|(step, _)| *step).collect();
+    let parts = parts
+        .into_iter()
+        .map(|(mut part, of_part)| {
+            part.merged = of_part.iter().map(|step| steps.binary_search(&(*step)?).ok()).collect();
+            part
+        })
+        .collect();
+    (parts, steps)
+}
+
+fn same_grid(a: &Grid, b: &Grid) -> bool {
+    let same = |a: &crate::numerics::axis::Axis, b: &crate::numerics::axis::Axis| {
+        a.len() == b.len()
+            && (0..a.len()).all(|k| match (a.value_at(k), b.value_at(k)) {
+                (Some(a), Some(b)) => (a - b).abs() < SAME_PLACE_DEG,
+                (a, b) => a.is_none() == b.is_none(),
+            })
+    };
+    same(&a.latitude, &b.latitude) && same(&a.longitude, &b.longitude)
+}
+
+/// The most common time between steps, ms.
+fn usual_step_ms(steps: &[Instant]) -> i64 {
+    let mut counts: BTreeMap<i64, usize> = BTreeMap::new();
+    for pair in steps.windows(2) {
+        *counts.entry(pair[1].0 - pair[0].0).or_default() += 1;
+    }
+    counts.iter().max_by_key(|(step, count)| (**count, -**step)).map_or(0, |(step, _)| *step)
+}
+
+impl WindSource {
+    /// What its numbers are.
+    pub fn kind(&self) -> WindKind {
+        self.kind
+    }
+
+    /// Steps farther apart than this are a gap, ms.
+    pub fn max_gap_ms(&self) -> i64 {
+        self.max_gap_ms
+    }
+
+    /// The most common time between steps, ms.
+    pub fn usual_step_ms(&self) -> i64 {
+        usual_step_ms(&self.meta.steps)
+    }
+
+    /// What the reader should know of it, in sentences.
+    pub fn warnings(&self) -> &[String] {
+        &self.meta.notes
+    }
+
+    /// The variables, with what they are.
+    pub fn variables(&self) -> &[String] {
+        &self.variables
+    }
+
+    /// The files, with their formats.
+    pub fn files(&self) -> Vec<(PathBuf, &'static str)> {
+        self.readers.iter().map(|reader| (reader.header.path.clone(), reader.header.format)).collect()
+    }
+
+    /// Number of numbers that a step has at a node.
+    pub fn components(&self) -> usize {
+        if self.kind == WindKind::Speed { 1 } else { 2 }
+    }
+
+    /// Which component a slab holds, and for each of its steps the place among the source's steps.
+    pub fn slab_steps(&self, slab: &Slab) -> (usize, &[Option<usize>]) {
+        let part = &self.parts[slab.file];
+        (part.component, &part.merged[slab.stored_steps.clone()])
+    }
+
+    /// How far two readings of one step may differ before they are a conflict: what packing can round away.
+    pub fn tolerance(&self) -> f64 {
+        1e-4 + self.parts.iter().map(|part| part.packing.resolution() * part.to_unit.abs()).fold(0.0, f64::max)
+    }
+
+    /// Name of the file that a slab comes from.
+    pub fn slab_file(&self, slab: &Slab) -> &Path {
+        &self.readers[self.parts[slab.file].reader].header.path
+    }
+
+    /// The error for two files that say different things about one step.
+    pub fn conflict(&self, slab: &Slab, step: Instant, first: f64, second: f64) -> NetcdfError {
+        let part = &self.parts[slab.file];
+        NetcdfError::Variable {
+            path: self.readers[part.reader].header.path.clone(),
+            variable: part.variable.clone(),
+            problem: format!(
+                "the step {step} is there twice with different values ({first} and {second}); expected one value (leave one file out)"
+            ),
+        }
+    }
+}
+
+impl FieldSource for WindSource {
+    type Error = NetcdfError;
+
+    fn meta(&self) -> &FieldMeta {
+        &self.meta
+    }
+
+    fn plan(&self, request: &NodeRequest) -> Vec<Slab> {
+        let mut slabs = Vec::new();
+        for (file, part) in self.parts.iter().enumerate() {
+            let wanted: Vec<usize> = (0..part.merged.len())
+                .filter(|stored| {
+                    part.merged[*stored].is_some_and(|merged| {
+                        request.window.is_none_or(|window| {
+                            // One step on either side of the window, so that its edges have neighbours.
+                            let steps = &self.meta.steps;
+                            let next = steps.get(merged + 1).is_none_or(|next| *next >= window.start);
+                            let before = merged.checked_sub(1).is_none_or(|k| steps[k] <= window.end);
+                            next && before
+                        })
+                    })
+                })
+                .collect();
+            let Some((first, last)) = wanted.first().zip(wanted.last()) else { continue };
+            let variable =
+                self.readers[part.reader].header.variable(&part.variable).expect("the part was made from it");
+            let length = match (&variable.storage, part.placement.step) {
+                (Storage::Chunked(chunks), Some(place)) => {
+                    // Short chunks are taken together, so that a slab is worth a task.
+                    let chunk = chunks.shape[place];
+                    chunk * (32 / chunk).max(1)
+                }
+                _ => UNCHUNKED_STEPS,
+            } as usize;
+            let mut start = first / length * length;
+            while start <= *last {
+                let end = (start + length).min(last + 1);
+                slabs.push(Slab { file, stored_steps: start.max(*first)..end });
+                start += length;
+            }
+        }
+        slabs
+    }
+
+    fn decode(&self, slab: &Slab, nodes: &[NodeId]) -> Result<Block, NetcdfError> {
+        let part = &self.parts[slab.file];
+        let reader = &self.readers[part.reader];
+        let variable = reader.header.variable(&part.variable).expect("the part was made from it");
+        let nodes: Vec<(u64, u64)> = nodes.iter().map(|node| (node.row as u64, node.column as u64)).collect();
+        let steps = slab.stored_steps.start as u64..slab.stored_steps.end as u64;
+        let mut values: Vec<f64> = Vec::new();
+        for (attempt, fixed) in part.placement.fixed.iter().enumerate() {
+            let wanted = Wanted {
+                fixed,
+                step: part.placement.step,
+                row: part.placement.row,
+                column: part.placement.column,
+                steps: steps.clone(),
+                nodes: &nodes,
+            };
+            let read = reader.gather(variable, &wanted)?.into_iter().map(|raw| self.convert(part, raw));
+            if attempt == 0 {
+                values = read.collect();
+            } else {
+                for (value, other) in values.iter_mut().zip(read) {
+                    if value.is_nan() {
+                        *value = other;
+                    }
+                }
+            }
+            if values.iter().all(|value| value.is_finite()) {
+                break;
+            }
+        }
+        Ok(Block { values })
+    }
+}
+
+impl WindSource {
+    /// A raw number as m/s, or as degrees that the wind comes from.
+    fn convert(&self, part: &Part, raw: f64) -> f64 {
+        let value = part.packing.value(raw);
+        if self.kind == WindKind::SpeedAndDirection && part.component == 1 {
+            let turned = value * part.to_unit.abs() + if part.to_unit < 0.0 { 180.0 } else { 0.0 };
+            return if turned.is_finite() { turned.rem_euclid(360.0) } else { f64::NAN };
+        }
+        let speed = value * part.to_unit;
+        // Infinite winds are damage, not weather.
+        if speed.is_finite() { speed } else { f64::NAN }
+    }
+}

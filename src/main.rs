@@ -1,0 +1,7 @@
+//! The `underwind` program.
+
+use std::process::ExitCode;
+
+fn main() -> ExitCode {
+    underwind::cli::main()
+}

@@ -1,0 +1,161 @@
+//! Gridded fields: what a source is, which nodes a site needs, and the blocks in which storage hands them over.
+
+use crate::model::{FlagSet, SourceId};
+use crate::numerics::axis::Axis;
+use crate::units::{Instant, Window};
+use serde::Serialize;
+use std::ops::Range;
+
+/// How the nodes of a field lie.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
+#[serde(rename_all = "snake_case")]
+pub enum Layout {
+    /// Latitude and longitude are axes of their own.
+    Rectilinear,
+    /// Latitude and longitude are fields of two dimensions.
+    Curvilinear,
+    /// A rectilinear grid about a rotated pole.
+    RotatedPole,
+    /// A rectilinear grid in a map projection.
+    Projected,
+    /// Nodes without rows and columns.
+    Nodes,
+    /// A list of stations.
+    Stations,
+}
+
+impl Layout {
+    /// Its name in words.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Rectilinear => "rectilinear grid",
+            Self::Curvilinear => "curvilinear grid (two-dimensional latitude and longitude)",
+            Self::RotatedPole => "grid about a rotated pole",
+            Self::Projected => "grid in a map projection",
+            Self::Nodes => "unstructured nodes",
+            Self::Stations => "list of stations",
+        }
+    }
+}
+
+/// What happens where a node that the site needs is land or missing.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub enum CoastRule {
+    /// The value is missing.
+    #[default]
+    Missing,
+    /// The weights of the other nodes are scaled up to one, and the value is flagged.
+    Renormalise,
+}
+
+/// How a value is taken from the nodes of a grid.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum SpatialRule {
+    /// Bilinear between the four nodes around the site.
+    Bilinear(CoastRule),
+    /// The nearest node that has data, within a distance, km.
+    Nearest {
+        /// Farthest distance that is allowed, km.
+        max_distance_km: f64,
+    },
+    /// Equal weights over all nodes within a distance, km; land is left out.
+    Footprint {
+        /// The distance, km.
+        radius_km: f64,
+    },
+}
+
+impl Default for SpatialRule {
+    fn default() -> Self {
+        Self::Bilinear(CoastRule::Missing)
+    }
+}
+
+/// A node by its stored row and column.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
+pub struct NodeId {
+    /// Index along the latitude axis as stored.
+    pub row: usize,
+    /// Index along the longitude axis as stored.
+    pub column: usize,
+}
+
+/// The nodes that a place needs, with their weights; the weights sum to one.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Stencil {
+    /// Nodes and weights; those of weight zero are never needed.
+    pub nodes: Vec<(NodeId, f64)>,
+    /// Remarks on every value that comes from it.
+    pub flags: FlagSet,
+}
+
+/// A rectilinear grid.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Grid {
+    /// Latitudes, degrees north.
+    pub latitude: Axis,
+    /// Longitudes, degrees east.
+    pub longitude: Axis,
+}
+
+/// What is known of a field from its headers.
+#[derive(Debug, Clone)]
+pub struct FieldMeta {
+    /// The source.
+    pub source: SourceId,
+    /// How the nodes lie.
+    pub layout: Layout,
+    /// The grid.
+    pub grid: Grid,
+    /// Steps in increasing order, none twice.
+    pub steps: Vec<Instant>,
+    /// Height above the surface, m, where known.
+    pub height_m: Option<f64>,
+    /// Remarks on every value.
+    pub flags: FlagSet,
+    /// What was understood and what the reader should know, in sentences.
+    pub notes: Vec<String>,
+}
+
+/// The nodes and the times that a job needs.
+#[derive(Debug, Clone)]
+pub struct NodeRequest {
+    /// The nodes, in increasing order, none twice.
+    pub nodes: Vec<NodeId>,
+    /// The times; `None`: all.
+    pub window: Option<Window>,
+}
+
+/// A run of steps of one file whose storage blocks are decoded together: the unit of parallel work.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Slab {
+    /// The file, by its place in the source.
+    pub file: usize,
+    /// Steps as stored in that file.
+    pub stored_steps: Range<usize>,
+}
+
+/// Decoded values of the requested nodes over a slab: component by component, step by step, node by node.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Block {
+    /// Values in the source's own units; NaN is missing.
+    pub values: Vec<f64>,
+}
+
+/// A gridded field whose node values can be had block by block.
+pub trait FieldSource: Sync {
+    /// Why a block cannot be had.
+    type Error: Send;
+
+    /// What is known from the headers.
+    fn meta(&self) -> &FieldMeta;
+
+    /// The slabs that hold the request, each storage block in exactly one of them. Reads headers alone.
+    fn plan(&self, request: &NodeRequest) -> Vec<Slab>;
+
+    /// Decodes a slab for the nodes of the request.
+    ///
+    /// # Errors
+    /// When a block cannot be read or decoded.
+    fn decode(&self, slab: &Slab, nodes: &[NodeId]) -> Result<Block, Self::Error>;
+}

@@ -1,0 +1,24 @@
+//! The jobs: read, compute, write. One file a job.
+
+mod check;
+mod fitting;
+mod inputs;
+mod look_up;
+mod matching;
+mod progress;
+mod provenance;
+mod reporting;
+mod run;
+mod sampling;
+mod simulate;
+
+pub use check::{CheckReport, check_study};
+pub use fitting::{fit_matched, fit_pairs, relations_json, write_relations};
+pub use inputs::{Inputs, OpenLevels, OpenWind, open_inputs, open_sites};
+pub use look_up::{Answer, LookUp, look_up_levels, look_up_sites, look_up_wind};
+pub use matching::{Counts, Matched, bring_together, write_tables};
+pub use progress::{Progress, Silent};
+pub use provenance::{InputRecord, PROGRAM};
+pub use run::{Outcome, Stage, make_folder, run};
+pub use sampling::sample_wind;
+pub use simulate::simulate_study;

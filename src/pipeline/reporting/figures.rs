@@ -1,0 +1,397 @@
+//! The figures of a study, filled from its results.
+
+use super::words::{estimate, file_part, level_label, onset, reference};
+use super::{Pairing, Placed, ReportInput};
+use crate::model::{BandLevels, FittedBand, Track};
+use crate::numerics::quantile::quantiles;
+use crate::report::{
+    AgainstFrequency, Coverage, CoverageKind, CoverageRow, CoverageSpan, CurvePoint, Estimate, FrequencyPanel,
+    FrequencyPoint, FrequencySeries, LevelAgainstWind, MapNodes, MapSite, ONSET_LABEL, Residuals, SLOPE_LABEL,
+    ShadedPeriod, SiteMap, SpectraByWindClass, TimeLine, TimePanel, TimeSeries, WindClassSpectrum, WindDistribution,
+    WindSample, against_frequency, coverage, level_against_wind, level_against_wind_grid, residuals, site_map,
+    spectra_by_wind_class, time_series, wind_distribution,
+};
+
+/// Bands drawn in the time series when the study names none: the lowest, the middle, the highest.
+const TIME_SERIES_BANDS: usize = 3;
+
+/// Figures of the study as a whole: map and coverage.
+pub(super) fn of_study(input: &ReportInput<'_>) -> Vec<Placed> {
+    vec![
+        Placed {
+            name: "map".into(),
+            caption: "Sites, and the grid nodes whose wind was used. Longitudes are scaled by the cosine of the middle latitude.".into(),
+            figure: site_map(&map(input)),
+        },
+        Placed {
+            name: "coverage".into(),
+            caption: "When there are levels, and whether they go into the fit. A day counts where any band does.".into(),
+            figure: coverage(&coverage_input(input)),
+        },
+    ]
+}
+
+/// Figures of one sensor with the wind of one source.
+pub(super) fn of_pairing(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<Placed> {
+    let record = pairing.record;
+    let stem = format!(
+        "{}_{}_{}",
+        file_part(&pairing.conditions.source.0),
+        file_part(&record.site),
+        file_part(&record.sensor)
+    );
+    let title = format!("Site {}, sensor {}", record.site, record.sensor);
+    let wind = format!("Wind: {}.", pairing.conditions.source);
+    let bands: Vec<LevelAgainstWind> =
+        record.bands.iter().enumerate().map(|(index, band)| level_wind_input(pairing, index, band, &title)).collect();
+    let mut placed = vec![
+        Placed {
+            name: format!("{stem}_bands"),
+            caption: format!(
+                "Level against wind speed, all bands. Shade: number of windows; dots with bars: median and quartiles by class of wind; line: fitted curve with its 95 % interval. {wind}"
+            ),
+            figure: level_against_wind_grid(&title, std::slice::from_ref(&wind), &bands),
+        },
+        Placed {
+            name: format!("{stem}_spectrum"),
+            caption: "Onset, slope and floor against frequency with their 95 % intervals. Bounds are drawn as bounds; what is not resolved is left out.".into(),
+            figure: against_frequency(&frequency_input(pairing, &title)),
+        },
+        Placed {
+            name: format!("{stem}_classes"),
+            caption: "Levels by class of wind: median, and the range from the 10 % to the 90 % quantile.".into(),
+            figure: spectra_by_wind_class(&classes_input(input, pairing, &title)),
+        },
+        Placed {
+            name: format!("{stem}_time"),
+            caption: "Wind speed and the levels of chosen bands over time (UTC). Gaps are left open.".into(),
+            figure: time_series(&time_input(input, pairing, &title)),
+        },
+        Placed {
+            name: format!("{stem}_wind"),
+            caption: "Wind speeds of the windows that have a level.".into(),
+            figure: wind_distribution(&WindDistribution {
+                title: format!("{title}: wind"),
+                notes: vec![wind.clone()],
+                samples: vec![WindSample {
+                    name: pairing.conditions.source.0.clone(),
+                    wind_m_s: pairing.wind_m_s.clone(),
+                }],
+                marks: Vec::new(),
+            }),
+        },
+    ];
+    for (index, band) in bands.iter().enumerate() {
+        let centre = file_part(&record.bands[index].band.label());
+        placed.push(Placed {
+            name: format!("{stem}_{centre}"),
+            caption: format!(
+                "Level against wind speed, {}. Shade: number of windows; dots with bars: median and quartiles by class of wind; line: fitted curve with its 95 % interval.",
+                band.short_title
+            ),
+            figure: level_against_wind(band),
+        });
+        placed.push(Placed {
+            name: format!("{stem}_{centre}_residuals"),
+            caption: format!("Level minus fitted level over time, {}.", band.short_title),
+            figure: residuals(&residual_input(pairing, index, &title)),
+        });
+    }
+    placed
+}
+
+fn level_wind_input(pairing: &Pairing<'_>, index: usize, band: &BandLevels, title: &str) -> LevelAgainstWind {
+    let label = band.band.label();
+    let mut figure = LevelAgainstWind {
+        title: format!("{title}, {label}"),
+        short_title: label,
+        level_label: level_label(pairing.record.kind).into(),
+        wind_label: String::new(),
+        wind_m_s: pairing.wind_m_s.clone(),
+        level_db: pairing.levels_db[index].clone(),
+        curve: Vec::new(),
+        floor_db: Estimate::NotResolved,
+        floor_name: String::new(),
+        onset_m_s: Estimate::NotResolved,
+        onset_name: String::new(),
+        notes: Vec::new(),
+        short_note: String::new(),
+    };
+    if let Some(fitted) = pairing.fitted.get(index) {
+        let relation = &fitted.relation;
+        figure.curve = relation
+            .curve_band
+            .iter()
+            .map(|point| CurvePoint {
+                wind_m_s: point.wind_speed_m_s,
+                level_db: point.level_db,
+                low_db: point.low_db.unwrap_or(f64::NAN),
+                high_db: point.high_db.unwrap_or(f64::NAN),
+            })
+            .collect();
+        figure.floor_db = estimate(relation.floor_db);
+        figure.onset_m_s = onset(relation.onset_m_s, relation.verdict);
+        let slope = estimate(relation.slope_db_per_decade).text("dB per decade", 1);
+        let mut verdict = relation.verdict_text();
+        figure.short_note.clone_from(&verdict);
+        if let Some(first) = verdict.get_mut(0..1) {
+            first.make_ascii_uppercase();
+        }
+        figure.notes = vec![
+            format!("{verdict}."),
+            format!("Slope {slope}; {} pairs; wind {}.", relation.diagnostics.samples, fitted.source),
+        ];
+    }
+    figure
+}
+
+fn frequency_input(pairing: &Pairing<'_>, title: &str) -> AgainstFrequency {
+    let series = |pick: &dyn Fn(&FittedBand) -> Estimate, joined: bool| {
+        let points = pairing
+            .fitted
+            .iter()
+            .filter_map(|fitted| Some(FrequencyPoint { frequency_hz: fitted.band?.centre_hz, estimate: pick(fitted) }))
+            .collect();
+        vec![FrequencySeries { name: pairing.conditions.source.0.clone(), points, joined }]
+    };
+    let greatest = pairing.wind_m_s.iter().copied().filter(|w| w.is_finite()).fold(f64::NAN, f64::max);
+    let references = if greatest.is_finite() { vec![(greatest, "highest wind".to_owned())] } else { Vec::new() };
+    AgainstFrequency {
+        title: title.to_owned(),
+        notes: Vec::new(),
+        panels: vec![
+            FrequencyPanel {
+                label: ONSET_LABEL.into(),
+                series: series(&|f| onset(f.relation.onset_m_s, f.relation.verdict), false),
+                references,
+            },
+            FrequencyPanel {
+                label: SLOPE_LABEL.into(),
+                series: series(&|f| estimate(f.relation.slope_db_per_decade), false),
+                references: Vec::new(),
+            },
+            FrequencyPanel {
+                label: format!("Floor ({})", reference(pairing.record.kind)),
+                series: series(&|f| estimate(f.relation.floor_db), true),
+                references: Vec::new(),
+            },
+        ],
+    }
+}
+
+/// Name, edges in words, and the windows of each class of wind.
+pub(super) fn wind_classes(input: &ReportInput<'_>, wind_m_s: &[f64]) -> Vec<(String, String, Vec<usize>)> {
+    let edges = &input.study.report.wind_class_edges_m_s;
+    let names: Vec<String> = if edges.len() == 2 {
+        ["calm", "moderate", "strong"].map(str::to_owned).to_vec()
+    } else {
+        (1..=edges.len() + 1).map(|k| format!("class {k}")).collect()
+    };
+    names
+        .into_iter()
+        .enumerate()
+        .map(|(class, name)| {
+            let low = if class == 0 { 0.0 } else { edges[class - 1] };
+            let high = edges.get(class).copied().unwrap_or(f64::INFINITY);
+            let words = match (class, edges.get(class)) {
+                (0, Some(high)) => format!("below {high} m/s"),
+                (_, Some(high)) => format!("{low} to {high} m/s"),
+                (_, None) => format!("{low} m/s and above"),
+            };
+            let windows = (0..wind_m_s.len()).filter(|k| wind_m_s[*k] >= low && wind_m_s[*k] < high).collect();
+            (name, words, windows)
+        })
+        .collect()
+}
+
+fn classes_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, title: &str) -> SpectraByWindClass {
+    let classes = wind_classes(input, &pairing.wind_m_s)
+        .into_iter()
+        .map(|(name, edges, windows)| {
+            let mut class = WindClassSpectrum {
+                name,
+                edges,
+                count: windows.len(),
+                frequency_hz: Vec::new(),
+                p10_db: Vec::new(),
+                p50_db: Vec::new(),
+                p90_db: Vec::new(),
+            };
+            for (band, levels) in pairing.record.bands.iter().zip(&pairing.levels_db) {
+                let [low, middle, high] = percentiles(levels, &windows);
+                class.frequency_hz.push(band.band.centre_hz);
+                class.p10_db.push(low);
+                class.p50_db.push(middle);
+                class.p90_db.push(high);
+            }
+            class
+        })
+        .collect();
+    SpectraByWindClass {
+        title: format!("{title}: levels by class of wind"),
+        notes: Vec::new(),
+        level_label: level_label(pairing.record.kind).into(),
+        classes,
+    }
+}
+
+/// 10 %, 50 % and 90 % quantile of the levels of some windows, dB; NaN where there are none.
+pub(super) fn percentiles(levels_db: &[f64], windows: &[usize]) -> [f64; 3] {
+    let here: Vec<f64> = windows.iter().map(|k| levels_db[*k]).filter(|level| level.is_finite()).collect();
+    quantiles(&here, [0.1, 0.5, 0.9])
+}
+
+fn time_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, title: &str) -> TimeSeries {
+    let record = pairing.record;
+    let time_ms: Vec<i64> = record.windows.iter().map(|window| window.centre().0).collect();
+    let mut steps: Vec<i64> = time_ms.windows(2).map(|pair| pair[1] - pair[0]).collect();
+    steps.sort_unstable();
+    let gap_ms = steps.get(steps.len() / 2).map_or(0, |step| step * 5 / 2);
+    let line = |name: String, value: &[f64]| TimeLine { name, time_ms: time_ms.clone(), value: value.to_vec(), gap_ms };
+    let chosen = chosen_bands(input, pairing);
+    TimeSeries {
+        title: format!("{title}: wind and levels"),
+        notes: Vec::new(),
+        panels: vec![
+            TimePanel {
+                label: "Wind speed (m/s)".into(),
+                lines: vec![line(pairing.conditions.source.0.clone(), &pairing.wind_m_s)],
+            },
+            TimePanel {
+                label: level_label(record.kind).into(),
+                lines: chosen
+                    .into_iter()
+                    .map(|index| line(record.bands[index].band.label(), &record.bands[index].level_db))
+                    .collect(),
+            },
+        ],
+        shaded: outside_deployments(pairing),
+    }
+}
+
+fn chosen_bands(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<usize> {
+    let bands = &pairing.record.bands;
+    let wanted = &input.study.report.bands_hz;
+    if wanted.is_empty() {
+        let mut chosen: Vec<usize> = if bands.len() <= TIME_SERIES_BANDS {
+            (0..bands.len()).collect()
+        } else {
+            vec![0, bands.len() / 2, bands.len() - 1]
+        };
+        chosen.dedup();
+        return chosen;
+    }
+    bands
+        .iter()
+        .enumerate()
+        .filter(|(_, band)| wanted.iter().any(|hz| band.band.low_hz <= *hz && *hz < band.band.high_hz))
+        .map(|(index, _)| index)
+        .collect()
+}
+
+fn outside_deployments(pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
+    let record = pairing.record;
+    let mut shaded: Vec<ShadedPeriod> = Vec::new();
+    for (window, _) in record.windows.iter().zip(&record.deployment).filter(|(_, deployment)| deployment.is_none()) {
+        match shaded.last_mut() {
+            Some(last) if last.end_ms == window.start.0 => last.end_ms = window.end.0,
+            _ => shaded.push(ShadedPeriod {
+                start_ms: window.start.0,
+                end_ms: window.end.0,
+                reason: "outside the sensor's deployments".into(),
+            }),
+        }
+    }
+    shaded
+}
+
+fn residual_input(pairing: &Pairing<'_>, index: usize, title: &str) -> Residuals {
+    let mut time_ms = Vec::new();
+    let mut residual_db = Vec::new();
+    if let Some(fitted) = pairing.fitted.get(index) {
+        for (k, window) in pairing.record.windows.iter().enumerate() {
+            let level_db = pairing.levels_db[index][k];
+            if let Some(curve_db) = fitted.relation.level_db(pairing.wind_m_s[k])
+                && level_db.is_finite()
+                && curve_db.is_finite()
+            {
+                time_ms.push(window.centre().0);
+                residual_db.push(level_db - curve_db);
+            }
+        }
+    }
+    Residuals {
+        title: format!("{title}, {}: residuals", pairing.record.bands[index].band.label()),
+        notes: Vec::new(),
+        time_ms,
+        residual_db,
+        families: Vec::new(),
+    }
+}
+
+fn map(input: &ReportInput<'_>) -> SiteMap {
+    let sites = input
+        .sites
+        .iter()
+        .filter_map(|site| {
+            let nominal = site.track.nominal()?;
+            let track = match &site.track {
+                Track::Fixed(_) => Vec::new(),
+                Track::Moving(positions) => {
+                    positions.iter().map(|(_, p)| (p.latitude_deg(), p.longitude_deg())).collect()
+                }
+            };
+            Some(MapSite {
+                id: site.id.clone(),
+                latitude_deg: nominal.latitude_deg(),
+                longitude_deg: nominal.longitude_deg(),
+                track,
+            })
+        })
+        .collect();
+    let nodes = input
+        .study
+        .wind
+        .iter()
+        .map(|wind| {
+            let of_source = input.matched.series.iter().filter(|series| series.source == wind.id);
+            let mut used_deg = Vec::new();
+            let mut unused_deg = Vec::new();
+            for node in of_source.flat_map(|series| &series.nodes) {
+                let place = (node.latitude_deg, node.longitude_deg);
+                if node.weight > 0.0 { used_deg.push(place) } else { unused_deg.push(place) }
+            }
+            MapNodes { name: wind.id.0.clone(), used_deg, unused_deg }
+        })
+        .filter(|nodes| !nodes.used_deg.is_empty())
+        .collect();
+    SiteMap { title: format!("{}: sites and grid nodes", input.study.name), notes: Vec::new(), sites, nodes }
+}
+
+fn coverage_input(input: &ReportInput<'_>) -> Coverage {
+    let rows = input
+        .matched
+        .records
+        .iter()
+        .zip(&input.matched.conditions)
+        .map(|(record, sources)| {
+            let spans = record
+                .windows
+                .iter()
+                .enumerate()
+                .filter(|(k, _)| record.bands.iter().any(|band| band.level_db[*k].is_finite()))
+                .map(|(k, window)| {
+                    let wind = sources.iter().any(|conditions| conditions.missing[k].is_none());
+                    let kind = match (record.deployment[k], wind) {
+                        (None, _) => CoverageKind::Excluded,
+                        (Some(_), true) => CoverageKind::Used,
+                        (Some(_), false) => CoverageKind::Unmatched,
+                    };
+                    CoverageSpan { start_ms: window.start.0, end_ms: window.end.0, kind }
+                })
+                .collect();
+            CoverageRow { name: format!("{} {}", record.site, record.sensor), spans }
+        })
+        .collect();
+    Coverage { title: format!("{}: coverage", input.study.name), notes: Vec::new(), rows }
+}

@@ -1,0 +1,121 @@
+//! `report`: figures and the page.
+
+mod figures;
+mod page;
+mod words;
+
+use super::fitting::wind_speed_m_s;
+use super::matching::{Matched, reason_of_pair};
+use super::progress::Progress;
+use super::provenance::InputRecord;
+use crate::Error;
+use crate::config::Study;
+use crate::io::replace_file::replace_with;
+use crate::model::{Conditions, FittedBand, SensorRecord, Site};
+use crate::report::{Figure, html};
+use rayon::prelude::*;
+use std::path::{Path, PathBuf};
+
+/// PNG pixels per CSS pixel: 2 is 192 pixels an inch, enough for a page and for print at a column's width.
+const PNG_SCALE: f64 = 2.0;
+
+/// All that the report shows.
+#[derive(Debug)]
+pub(super) struct ReportInput<'a> {
+    /// The study.
+    pub study: &'a Study,
+    /// Its sites.
+    pub sites: &'a [Site],
+    /// Levels and wind brought together.
+    pub matched: &'a Matched,
+    /// The relations.
+    pub fitted: &'a [FittedBand],
+    /// The input files.
+    pub inputs: &'a [InputRecord],
+}
+
+/// One sensor's record with the wind of one source and the relations of its bands.
+struct Pairing<'a> {
+    record: &'a SensorRecord,
+    conditions: &'a Conditions,
+    fitted: Vec<&'a FittedBand>,
+    /// The wind speed that the fit used, one entry a window, m/s.
+    wind_m_s: Vec<f64>,
+    /// Levels of each band, one entry a window, dB; NaN where the pair is not used.
+    levels_db: Vec<Vec<f64>>,
+}
+
+/// A figure with its place and its caption.
+pub(super) struct Placed {
+    /// File name without extension.
+    name: String,
+    caption: String,
+    figure: Figure,
+}
+
+/// Draws all figures and writes them (SVG and PNG) and the page. Returns the files written.
+///
+/// # Errors
+/// When a file cannot be written.
+pub(super) fn write_report(
+    input: &ReportInput<'_>,
+    folder: &Path,
+    progress: &dyn Progress,
+) -> Result<Vec<PathBuf>, Error> {
+    let pairings = pairings(input);
+    let whole = figures::of_study(input);
+    let per_pairing: Vec<Vec<Placed>> =
+        pairings.par_iter().map(|pairing| figures::of_pairing(input, pairing)).collect();
+    let figure_folder = folder.join("figures");
+    std::fs::create_dir_all(&figure_folder).map_err(|source| Error::Folder { path: figure_folder.clone(), source })?;
+    let all: Vec<&Placed> = whole.iter().chain(per_pairing.iter().flatten()).collect();
+    progress.start(all.len() as u64, "drawing");
+    let written: Vec<Vec<PathBuf>> = all
+        .par_iter()
+        .map(|placed| {
+            let svg = figure_folder.join(format!("{}.svg", placed.name));
+            replace_with(&svg, placed.figure.svg().as_bytes())?;
+            let png = figure_folder.join(format!("{}.png", placed.name));
+            replace_with(&png, &placed.figure.png(PNG_SCALE)?)?;
+            progress.advance(1);
+            Ok(vec![svg, png])
+        })
+        .collect::<Result<_, Error>>()?;
+    progress.finish();
+    let page = folder.join("report.html");
+    let document = page::document(input, &pairings, whole, per_pairing);
+    replace_with(&page, html(&document).as_bytes())?;
+    let mut files: Vec<PathBuf> = written.into_iter().flatten().collect();
+    files.push(page);
+    Ok(files)
+}
+
+fn pairings<'a>(input: &'a ReportInput<'a>) -> Vec<Pairing<'a>> {
+    let mut pairings = Vec::new();
+    for wind in &input.study.wind {
+        for (record, sources) in input.matched.records.iter().zip(&input.matched.conditions) {
+            let Some(conditions) = sources.iter().find(|conditions| conditions.source == wind.id) else { continue };
+            let fitted = input
+                .fitted
+                .iter()
+                .filter(|f| f.source == wind.id && f.site == record.site && f.sensor == record.sensor)
+                .collect();
+            let which = input.study.matching.wind_speed;
+            let wind_m_s = conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), which)).collect();
+            let levels_db = record
+                .bands
+                .iter()
+                .map(|band| {
+                    (0..record.windows.len())
+                        .map(|k| match reason_of_pair(record, band, conditions, k) {
+                            None => band.level_db[k],
+                            Some(_) => f64::NAN,
+                        })
+                        .collect()
+                })
+                .collect();
+            pairings.push(Pairing { record, conditions, fitted, wind_m_s, levels_db });
+        }
+    }
+    pairings
+}

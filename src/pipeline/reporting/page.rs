@@ -1,0 +1,266 @@
+//! The page, filled from the results.
+
+use super::figures::{percentiles, wind_classes};
+use super::words::{estimate, reference};
+use super::{Pairing, Placed, ReportInput};
+use crate::config::WindowSpeed;
+use crate::model::{FittedBand, LevelStatistic, Missing, RelationWarning, Verdict};
+use crate::pipeline::provenance::PROGRAM;
+use crate::report::{Block, Column, Document, Section, Table, number};
+
+/// Said on every page: what the numbers are not.
+const CAUTION: &str = "These results describe levels at the sensors and their relation to modelled wind. They are no assessment of impact on animals or people and no aid to navigation: for such decisions the applicable rules and standards, and qualified people, come first.";
+
+/// The page of a study.
+pub(super) fn document(
+    input: &ReportInput<'_>,
+    pairings: &[Pairing<'_>],
+    whole: Vec<Placed>,
+    per_pairing: Vec<Vec<Placed>>,
+) -> Document {
+    let mut sections = vec![inputs_section(input, whole)];
+    for (pairing, figures) in pairings.iter().zip(per_pairing) {
+        sections.push(pairing_section(input, pairing, figures));
+    }
+    sections.push(methods_section(input));
+    sections.push(provenance_section(input));
+    Document {
+        title: input.study.name.clone(),
+        subtitle: subtitle(input),
+        summary: summary(input),
+        warnings: vec![CAUTION.to_owned()],
+        sections,
+        footer: format!("Written by {PROGRAM}."),
+    }
+}
+
+fn subtitle(input: &ReportInput<'_>) -> String {
+    let windows = input.matched.records.iter().flat_map(|record| &record.windows);
+    let span = windows.fold(None, |span: Option<(_, _)>, window| {
+        let (start, end) = span.unwrap_or((window.start, window.end));
+        Some((start.min(window.start), end.max(window.end)))
+    });
+    let sites: Vec<&str> = input.sites.iter().map(|site| site.id.as_str()).collect();
+    let span = span.map_or(String::new(), |(start, end)| {
+        format!("; {} to {}", crate::report::iso_date(start.0), crate::report::iso_date(end.0))
+    });
+    format!("Level against wind speed; sites {}{span}", sites.join(", "))
+}
+
+fn summary(input: &ReportInput<'_>) -> Vec<String> {
+    let counts = &input.matched.counts;
+    let unused: u64 = counts.not_used.values().sum();
+    let count = |verdicts: &[Verdict]| input.fitted.iter().filter(|f| verdicts.contains(&f.relation.verdict)).count();
+    let total = input.fitted.len();
+    let mut sentences = vec![format!(
+        "{} pairs of wind and level are used, {} are not.",
+        number::count(counts.used as usize),
+        number::count(unused as usize)
+    )];
+    let named = count(&[Verdict::Saturation, Verdict::FallsAfterOnset]);
+    let decreasing = count(&[Verdict::SlopeDecreases, Verdict::SlopeBreak]);
+    let open = count(&[Verdict::NoOnset, Verdict::AboveOnly, Verdict::BelowOnly]);
+    let flat = count(&[Verdict::NoSlope, Verdict::NotFitted]);
+    let point = count(&[Verdict::PointOnly]);
+    if point > 0 {
+        sentences.push(format!(
+            "{point} of {total} relations are estimates without intervals (replicates = 0): no onset is claimed."
+        ));
+    }
+    if point < total {
+        sentences.push(format!(
+            "Of {total} relations, {named} have an onset with an interval, {decreasing} a slope that decreases without an onset that can be named, {open} only a bound for the onset, and {flat} no resolvable rise with wind."
+        ));
+    }
+    sentences
+}
+
+fn inputs_section(input: &ReportInput<'_>, whole: Vec<Placed>) -> Section {
+    let mut blocks: Vec<Block> = whole.into_iter().map(block).collect();
+    let table = Table {
+        caption: "Pairs of wind and level, by use".into(),
+        columns: vec![Column::row_name("reason"), Column::number("pairs", ""), Column::text("meaning")],
+        rows: std::iter::once(vec!["used".to_owned(), input.matched.counts.used.to_string(), String::new()])
+            .chain(input.matched.counts.not_used.iter().map(|(why, n)| {
+                let meaning = Missing::ALL.iter().find(|missing| missing.name() == *why).map_or("", |m| m.sentence());
+                vec![(*why).to_owned(), n.to_string(), meaning.to_owned()]
+            }))
+            .collect(),
+        note: String::new(),
+    };
+    blocks.push(Block::Table(table));
+    if !input.matched.counts.rows_not_used.is_empty() {
+        let points = input.matched.counts.rows_not_used.iter().map(|(why, n)| format!("{why}: {n}")).collect();
+        blocks.push(Block::Text("Rows of the level tables that reach no pair:".into()));
+        blocks.push(Block::Points(points));
+    }
+    if !input.matched.remarks.is_empty() {
+        blocks.push(Block::Text("Remarks of the run:".into()));
+        blocks.push(Block::Points(input.matched.remarks.clone()));
+    }
+    Section::new("Sites, coverage and what was used", blocks)
+}
+
+fn block(placed: Placed) -> Block {
+    Block::Figure { figure: placed.figure, caption: placed.caption, file: Some(format!("figures/{}.svg", placed.name)) }
+}
+
+fn pairing_section(input: &ReportInput<'_>, pairing: &Pairing<'_>, figures: Vec<Placed>) -> Section {
+    let record = pairing.record;
+    let title = format!("Site {}, sensor {}, wind {}", record.site, record.sensor, pairing.conditions.source);
+    let mut section = Section::new(&title, vec![Block::Table(relation_table(pairing))]);
+    let warnings = warnings(&pairing.fitted);
+    if !warnings.is_empty() {
+        section.blocks.push(Block::Text("Remarks on the relations:".into()));
+        section.blocks.push(Block::Points(warnings));
+    }
+    let mut details = Section::new("Band by band", Vec::new());
+    // The first figures show the sensor as a whole; the others one band each.
+    let mut figures = figures.into_iter();
+    let whole = figures.len() - 2 * record.bands.len();
+    for placed in figures.by_ref().take(whole) {
+        let classes = placed.name.ends_with("_classes");
+        section.blocks.push(block(placed));
+        if classes {
+            section.blocks.push(Block::Table(class_table(input, pairing)));
+        }
+    }
+    details.blocks.extend(figures.map(block));
+    section.sections.push(details);
+    section
+}
+
+fn relation_table(pairing: &Pairing<'_>) -> Table {
+    let rows = pairing
+        .fitted
+        .iter()
+        .map(|fitted| {
+            let relation = &fitted.relation;
+            vec![
+                unbroken(&fitted.band_label()),
+                estimate(relation.floor_db).text("", 1),
+                estimate(relation.level_at_10_m_s_db).text("", 1),
+                estimate(relation.slope_db_per_decade).text("", 1),
+                estimate(relation.mean_square_pressure_exponent).text("", 2),
+                relation.verdict_text(),
+                relation.diagnostics.residual_scale_db.map_or_else(|| "–".to_owned(), |scale| number::fixed(scale, 1)),
+                number::count(relation.diagnostics.samples),
+            ]
+        })
+        .collect();
+    let level = reference(pairing.record.kind);
+    Table {
+        caption: "Relation of level to wind speed, with 95 % intervals".into(),
+        columns: vec![
+            Column::row_name("band"),
+            Column::number("floor", level),
+            Column::number("level at 10 m/s", level),
+            Column::number("slope", "dB per decade"),
+            Column::number("exponent", "of mean-square pressure"),
+            Column::text("onset of saturation"),
+            Column::number("residual", "dB"),
+            Column::number("pairs", ""),
+        ],
+        rows,
+        note: "Floor: level reached in calm, without passing ships where the scatter model resolves them. Slope: rise of the wind part per factor ten in wind speed below the onset. Intervals are statistical; they do not include the calibration of the sensor.".into(),
+    }
+}
+
+/// A number and its unit that stay on one line.
+fn unbroken(text: &str) -> String {
+    text.replace(' ', "\u{a0}")
+}
+
+fn warnings(fitted: &[&FittedBand]) -> Vec<String> {
+    RelationWarning::ALL
+        .iter()
+        .filter_map(|warning| {
+            let bands: Vec<String> =
+                fitted.iter().filter(|f| f.relation.warnings.contains(warning)).map(|f| f.band_label()).collect();
+            (!bands.is_empty()).then(|| format!("{}: {}.", bands.join(", "), warning.sentence()))
+        })
+        .collect()
+}
+
+fn class_table(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Table {
+    let classes = wind_classes(input, &pairing.wind_m_s);
+    let mut columns = vec![Column::row_name("band")];
+    for (name, edges, windows) in &classes {
+        columns.push(Column::number(&format!("{name}: 10 %"), edges));
+        columns.push(Column::number("50 %", edges));
+        columns.push(Column::number("90 %", &format!("{} windows", windows.len())));
+        columns.push(Column::number("N", "levels"));
+    }
+    let rows = pairing
+        .record
+        .bands
+        .iter()
+        .zip(&pairing.levels_db)
+        .map(|(band, levels)| {
+            let mut row = vec![unbroken(&band.band.label())];
+            for (_, _, windows) in &classes {
+                row.extend(percentiles(levels, windows).map(|level| number::fixed(level, 1)));
+                row.push(number::count(windows.iter().filter(|k| levels[**k].is_finite()).count()));
+            }
+            row
+        })
+        .collect();
+    Table {
+        caption: format!("Levels by class of wind ({}): quantiles", reference(pairing.record.kind)),
+        columns,
+        rows,
+        note: String::new(),
+    }
+}
+
+fn methods_section(input: &ReportInput<'_>) -> Section {
+    let matching = &input.study.matching;
+    let statistic = match matching.statistic {
+        LevelStatistic::Median => "the median of its samples",
+        LevelStatistic::PowerMean => "the level of the mean power of its samples",
+    };
+    let window = match matching.window_s {
+        Some(seconds) => {
+            format!("Level samples are gathered into windows of {seconds} s; a window's level is {statistic}.")
+        }
+        None => "Each level stands for its own window, as the table states it.".to_owned(),
+    };
+    let speed = match matching.wind_speed {
+        WindowSpeed::SpeedMean => "the mean over the window of the speed of the interpolated components",
+        WindowSpeed::SpeedOfMean => "the speed of the mean components of the window",
+        WindowSpeed::ScalarSpeedMean => "the mean over the window of the speed interpolated in space as a scalar",
+    };
+    let relation = &input.study.relation;
+    let blocks = vec![
+        Block::Method {
+            title: "How the wind over a window was found".into(),
+            text: vec![
+                format!("Wind components are interpolated in space at each model step ({}), and run linearly from step to step, never across a gap longer than the limit of the source. The mean over the half-open window [start, end) is the exact integral. The fit uses {speed}.", matching.spatial_words()),
+                window,
+            ],
+        },
+        Block::Method {
+            title: "How floor, slope and onset were estimated".into(),
+            text: vec![
+                "Per band, the mean square pressure is the sum of a floor and a wind part; the wind part rises by the slope per factor ten in wind speed and stays constant above the onset. Levels are averaged by classes of the logarithm of wind speed, with a loss that limits the weight of outliers; the onset is found by a profile over all onsets that the winds of the record allow.".into(),
+                relation.words(),
+            ],
+        },
+    ];
+    Section::new("How each number was made", blocks)
+}
+
+fn provenance_section(input: &ReportInput<'_>) -> Section {
+    let rows = input
+        .inputs
+        .iter()
+        .map(|record| vec![record.file.clone(), record.bytes.to_string(), record.sha256.clone()])
+        .collect();
+    let table = Table {
+        caption: "Input files".into(),
+        columns: vec![Column::row_name("file"), Column::number("size", "bytes"), Column::text("SHA-256")],
+        rows,
+        note: "The resolved study and all counts are in provenance.json.".into(),
+    };
+    Section::new("Where the numbers come from", vec![Block::Table(table)])
+}

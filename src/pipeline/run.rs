@@ -1,0 +1,83 @@
+//! The whole job, or the first part of it: match, fit, report.
+
+use super::fitting::{fit_matched, write_relations};
+use super::inputs::open_inputs;
+use super::matching::{Counts, bring_together, write_tables};
+use super::progress::Progress;
+use super::provenance::{PROGRAM, Provenance, input_records, write_provenance};
+use super::reporting::{ReportInput, write_report};
+use crate::Error;
+use crate::config::Study;
+use crate::model::FittedBand;
+use std::path::{Path, PathBuf};
+
+/// What is written.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Stage {
+    /// The tables of sampled wind, conditions and matchups.
+    Match,
+    /// The relation table.
+    Fit,
+    /// Figures and page.
+    Report,
+    /// All of these.
+    Everything,
+}
+
+/// What a run came to.
+#[derive(Debug)]
+pub struct Outcome {
+    /// The relations; empty for `Stage::Match`.
+    pub fitted: Vec<FittedBand>,
+    /// How many pairs and rows were used.
+    pub counts: Counts,
+    /// Remarks.
+    pub remarks: Vec<String>,
+    /// Files written.
+    pub written: Vec<PathBuf>,
+}
+
+/// Runs a study up to a stage, and writes that stage's outputs and the provenance.
+///
+/// # Errors
+/// When an input cannot be used, when the inputs have nothing in common, or when an output cannot be written.
+pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outcome, Error> {
+    let inputs = open_inputs(study)?;
+    let matched = bring_together(study, &inputs, progress)?;
+    // Made before the work that takes long, so that a folder that cannot be written is known at once.
+    make_folder(&study.output)?;
+    let mut written = Vec::new();
+    if matches!(stage, Stage::Match | Stage::Everything) {
+        written.extend(write_tables(study, &matched, &study.output, progress)?);
+    }
+    let fitted = if stage == Stage::Match { Vec::new() } else { fit_matched(study, &matched, progress) };
+    if matches!(stage, Stage::Fit | Stage::Everything) {
+        written.extend(write_relations(&fitted, &study.tables, &study.output)?);
+    }
+    let records = input_records(study, &inputs.files(study))?;
+    if matches!(stage, Stage::Report | Stage::Everything) {
+        let input = ReportInput { study, sites: &inputs.sites, matched: &matched, fitted: &fitted, inputs: &records };
+        written.extend(write_report(&input, &study.output, progress)?);
+    }
+    let path = study.output.join("provenance.json");
+    let provenance = Provenance {
+        program: PROGRAM,
+        study,
+        inputs: &records,
+        pairs_used: matched.counts.used,
+        pairs_not_used: &matched.counts.not_used,
+        level_rows_not_used: &matched.counts.rows_not_used,
+        remarks: &matched.remarks,
+    };
+    write_provenance(&provenance, &path)?;
+    written.push(path);
+    Ok(Outcome { fitted, counts: matched.counts, remarks: matched.remarks, written })
+}
+
+/// Makes a folder for outputs, with all above it.
+///
+/// # Errors
+/// When it cannot be made.
+pub fn make_folder(folder: &Path) -> Result<(), Error> {
+    std::fs::create_dir_all(folder).map_err(|source| Error::Folder { path: folder.to_owned(), source })
+}

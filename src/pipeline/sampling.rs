@@ -1,0 +1,218 @@
+//! Wind at the sites of a study: nodes first, then only their blocks, each once, in parallel; memory follows sites and steps.
+
+use super::progress::Progress;
+use crate::io::netcdf::{NetcdfError, WindKind, WindSource};
+use crate::model::{
+    Block, FieldSource, FlagSet, Grid, Missing, NodeId, NodeRequest, NodeUse, Point, Site, Slab, SpatialRule, Stencil,
+    Track, WindSeries,
+};
+use crate::science::sample::{NodeWinds, distance_km, stencil, wind_at_site};
+use crate::units::Window;
+use rayon::prelude::*;
+use std::collections::BTreeSet;
+
+/// Slabs that are decoded before their values are put in place: bounds the memory, keeps all threads busy.
+const SLABS_AT_A_TIME: usize = 64;
+
+/// The stencil of a site at each step that is asked for.
+enum Stencils {
+    /// A site that stays.
+    Fixed(Result<Stencil, Missing>),
+    /// One for each step.
+    Moving(Vec<Result<Stencil, Missing>>),
+}
+
+impl Stencils {
+    fn of(grid: &Grid, site: &Site, rule: &SpatialRule, steps: &[crate::units::Instant]) -> Self {
+        match &site.track {
+            Track::Fixed(place) => Self::Fixed(stencil(grid, *place, rule)),
+            Track::Moving(_) => Self::Moving(
+                steps
+                    .iter()
+                    .map(|step| site.track.at(*step).ok_or(Missing::NoPosition).and_then(|p| stencil(grid, p, rule)))
+                    .collect(),
+            ),
+        }
+    }
+
+    fn at(&self, step: usize) -> &Result<Stencil, Missing> {
+        match self {
+            Self::Fixed(stencil) => stencil,
+            Self::Moving(stencils) => &stencils[step],
+        }
+    }
+
+    fn all(&self) -> &[Result<Stencil, Missing>] {
+        match self {
+            Self::Fixed(stencil) => std::slice::from_ref(stencil),
+            Self::Moving(stencils) => stencils,
+        }
+    }
+}
+
+/// Wind at the sites at the native steps of a source, within a window (and one step on either side), or at all steps.
+/// The same bytes come out for any number of threads.
+///
+/// # Errors
+/// When a block cannot be read or decoded, or two files contradict each other.
+pub fn sample_wind(
+    source: &WindSource,
+    sites: &[Site],
+    window: Option<Window>,
+    rule: &SpatialRule,
+    progress: &dyn Progress,
+) -> Result<Vec<WindSeries>, NetcdfError> {
+    let meta = source.meta();
+    let steps = steps_of(&meta.steps, window);
+    let stencils: Vec<Stencils> =
+        sites.iter().map(|site| Stencils::of(&meta.grid, site, rule, &meta.steps[steps.clone()])).collect();
+    let nodes: Vec<NodeId> = stencils
+        .iter()
+        .flat_map(Stencils::all)
+        .filter_map(|stencil| stencil.as_ref().ok())
+        .flat_map(|stencil| stencil.nodes.iter().filter(|(_, weight)| *weight > 0.0).map(|(node, _)| *node))
+        .collect::<BTreeSet<_>>()
+        .into_iter()
+        .collect();
+    let values = decode_all(source, &nodes, &steps, window, progress)?;
+    let all = sites
+        .par_iter()
+        .zip(&stencils)
+        .map(|(site, stencils)| {
+            let mut series = empty_series(source, site, meta.steps[steps.clone()].to_vec());
+            series.nodes = nodes_used(&meta.grid, site, stencils);
+            for k in 0..steps.len() {
+                let slot = k * nodes.len();
+                let of_step = |component: usize| {
+                    values.get(component).map_or(&[][..], |values| &values[slot..slot + nodes.len()])
+                };
+                let winds = NodeWinds {
+                    nodes: &nodes,
+                    first: of_step(0),
+                    second: of_step(1),
+                    second_is_direction: source.kind() == WindKind::SpeedAndDirection,
+                };
+                let found = stencils
+                    .at(k)
+                    .as_ref()
+                    .map_err(|why| *why)
+                    .and_then(|stencil| Ok((wind_at_site(stencil, rule, &winds)?, stencil.flags)));
+                match found {
+                    Ok(((wind, flags), of_stencil)) => {
+                        series.eastward_m_s.push(wind.eastward_m_s);
+                        series.northward_m_s.push(wind.northward_m_s);
+                        series.scalar_speed_m_s.push(wind.scalar_speed_m_s);
+                        series.flags.push(meta.flags.union(flags).union(of_stencil));
+                        series.missing.push(None);
+                    }
+                    Err(why) => {
+                        series.eastward_m_s.push(f64::NAN);
+                        series.northward_m_s.push(f64::NAN);
+                        series.scalar_speed_m_s.push(f64::NAN);
+                        series.flags.push(FlagSet::default());
+                        series.missing.push(Some(why));
+                    }
+                }
+            }
+            series
+        })
+        .collect();
+    Ok(all)
+}
+
+/// The steps within a window and one on either side.
+fn steps_of(steps: &[crate::units::Instant], window: Option<Window>) -> std::ops::Range<usize> {
+    let Some(window) = window else { return 0..steps.len() };
+    let first = steps.partition_point(|step| *step <= window.start).saturating_sub(1);
+    let last = (steps.partition_point(|step| *step < window.end) + 1).min(steps.len());
+    first.min(last)..last
+}
+
+fn empty_series(source: &WindSource, site: &Site, steps: Vec<crate::units::Instant>) -> WindSeries {
+    let meta = source.meta();
+    WindSeries {
+        source: meta.source.clone(),
+        site: site.id.clone(),
+        eastward_m_s: Vec::with_capacity(steps.len()),
+        northward_m_s: Vec::with_capacity(steps.len()),
+        scalar_speed_m_s: Vec::with_capacity(steps.len()),
+        flags: Vec::with_capacity(steps.len()),
+        missing: Vec::with_capacity(steps.len()),
+        steps,
+        nodes: Vec::new(),
+        height_m: meta.height_m,
+        max_gap_ms: source.max_gap_ms(),
+    }
+}
+
+/// Values of the nodes: component by component, step by step, node by node.
+fn decode_all(
+    source: &WindSource,
+    nodes: &[NodeId],
+    steps: &std::ops::Range<usize>,
+    window: Option<Window>,
+    progress: &dyn Progress,
+) -> Result<Vec<Vec<f64>>, NetcdfError> {
+    let mut values = vec![vec![f64::NAN; steps.len() * nodes.len()]; source.components()];
+    if nodes.is_empty() {
+        return Ok(values);
+    }
+    let slabs = source.plan(&NodeRequest { nodes: nodes.to_vec(), window });
+    progress.start(slabs.len() as u64, "reading wind");
+    for batch in slabs.chunks(SLABS_AT_A_TIME) {
+        let blocks: Vec<Result<Block, NetcdfError>> = batch
+            .par_iter()
+            .map(|slab| {
+                let block = source.decode(slab, nodes);
+                progress.advance(1);
+                block
+            })
+            .collect();
+        for (slab, block) in batch.iter().zip(blocks) {
+            place(source, slab, &block?, nodes.len(), steps, &mut values)?;
+        }
+    }
+    progress.finish();
+    Ok(values)
+}
+
+/// Puts a block's values where they belong; a step that is there already must say the same.
+fn place(
+    source: &WindSource,
+    slab: &Slab,
+    block: &Block,
+    nodes: usize,
+    steps: &std::ops::Range<usize>,
+    values: &mut [Vec<f64>],
+) -> Result<(), NetcdfError> {
+    let (component, merged) = source.slab_steps(slab);
+    let tolerance = source.tolerance();
+    for (k, step) in merged.iter().enumerate() {
+        let Some(step) = step.filter(|step| steps.contains(step)) else { continue };
+        let from = &block.values[k * nodes..(k + 1) * nodes];
+        let slot = (step - steps.start) * nodes;
+        for (known, new) in values[component][slot..slot + nodes].iter_mut().zip(from) {
+            if known.is_nan() {
+                *known = *new;
+            } else if (*known - new).abs() > tolerance {
+                return Err(source.conflict(slab, source.meta().steps[step], *known, *new));
+            }
+        }
+    }
+    Ok(())
+}
+
+fn nodes_used(grid: &Grid, site: &Site, stencils: &Stencils) -> Vec<NodeUse> {
+    let Some(place) = site.track.nominal() else { return Vec::new() };
+    let Some(stencil) = stencils.all().iter().find_map(|stencil| stencil.as_ref().ok()) else { return Vec::new() };
+    stencil
+        .nodes
+        .iter()
+        .filter_map(|(node, weight)| {
+            let latitude_deg = grid.latitude.value_at(node.row)?;
+            let longitude_deg = (grid.longitude.value_at(node.column)? + 180.0).rem_euclid(360.0) - 180.0;
+            let distance_km = distance_km(place, Point::new(latitude_deg, longitude_deg).ok()?);
+            Some(NodeUse { latitude_deg, longitude_deg, weight: *weight, distance_km })
+        })
+        .collect()
+}

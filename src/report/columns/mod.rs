@@ -1,0 +1,11 @@
+//! Results as plain tables: names with units, and one sentence of meaning for each column.
+
+mod conditions;
+mod matchups;
+mod relation;
+mod sampled;
+
+pub use conditions::conditions_table;
+pub use matchups::matchups_table;
+pub use relation::relation_table;
+pub use sampled::sampled_table;

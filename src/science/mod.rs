@@ -1,0 +1,6 @@
+//! The science: from plain data to plain data. No files, no printing, no clock.
+
+pub mod level_wind;
+pub mod matchup;
+pub mod sample;
+pub mod simulate;

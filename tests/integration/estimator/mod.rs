@@ -1,0 +1,8 @@
+//! The fit of level against wind: check cases, invariances, independent references, a short simulation study.
+
+mod cases;
+mod edge_cases;
+mod further;
+mod properties;
+mod simulator;
+mod study;

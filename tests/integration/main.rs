@@ -1,0 +1,9 @@
+//! All integration tests: one program, so that the heavy libraries are linked once.
+#![expect(clippy::unwrap_used, reason = "a test may stop at the first surprise")]
+
+mod demo;
+mod estimator;
+mod layering;
+mod study_file;
+mod support;
+mod tables;
