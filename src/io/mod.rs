@@ -1,6 +1,7 @@
 //! From bytes to the model and back: the only code that knows netcdf, hdf5 and polars.
 
 pub mod checksum;
+mod contain;
 pub mod delimited;
 pub mod levels;
 pub mod netcdf;

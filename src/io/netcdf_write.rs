@@ -72,7 +72,8 @@ fn fill(path: &Path, wind: &PackedWind<'_>) -> Result<(), netcdf::Error> {
     let units = format!("hours since {}", wind.start.iso().replace('T', " ").replace('Z', ""));
     let hours: Vec<i32> = (0..wind.hours as i32).collect();
     let mut time = file.add_variable::<i32>("time", &["time"])?;
-    for (name, text) in [("standard_name", "time"), ("units", units.as_str()), ("calendar", "standard"), ("axis", "T")] {
+    for (name, text) in [("standard_name", "time"), ("units", units.as_str()), ("calendar", "standard"), ("axis", "T")]
+    {
         time.put_attribute(name, text)?;
     }
     time.put_values(&hours, ..)?;
@@ -114,7 +115,7 @@ fn fill(path: &Path, wind: &PackedWind<'_>) -> Result<(), netcdf::Error> {
 mod tests {
     use super::*;
     use crate::io::netcdf::{WindOptions, open_wind};
-    use crate::model::{NodeId, NodeRequest, SourceId};
+    use crate::model::{FieldSource, NodeId, NodeRequest, SourceId};
 
     #[test]
     fn what_is_written_is_read_again() {
@@ -134,7 +135,7 @@ mod tests {
         };
         write_wind(&path, &wind).unwrap();
         let first = std::fs::read(&path).unwrap();
-        let source = open_wind(SourceId("w".to_owned()), &[path.clone()], &WindOptions::default()).unwrap();
+        let source = open_wind(SourceId("w".to_owned()), std::slice::from_ref(&path), &WindOptions::default()).unwrap();
         let meta = source.meta();
         assert_eq!(meta.steps[2], Instant::parse("2031-02-01T08:00:00Z").unwrap());
         assert_eq!(meta.height_m, Some(10.0));

@@ -95,7 +95,7 @@ pub(crate) fn run(arguments: &[String]) {
             continue;
         }
         let start = Instant::now();
-        let options = Options { replicates: 160, ..Options::default() };
+        let options = Options { replicates: 400, ..Options::default() };
         let relations: Vec<Relation> = (1..=runs)
             .into_par_iter()
             .map(|seed| {

@@ -3,7 +3,9 @@
 
 mod demo;
 mod estimator;
+mod grids;
 mod layering;
+mod simulate;
 mod study_file;
 mod support;
 mod tables;

@@ -4,6 +4,7 @@ use super::error::NetcdfError;
 use super::header::{
     AttributeValue, ChunkPlace, Chunks, Dimension, Filter, Header, NumberType, Storage, Variable, VariableType,
 };
+use crate::io::contain::contain;
 use hdf5_metno as h5;
 use netcdf::AttributeValue as Nc;
 use netcdf::types::{FloatType, IntType, NcVariableType};
@@ -12,6 +13,12 @@ use std::path::Path;
 
 /// Reads the header of a NetCDF-4 file.
 pub(super) fn read_header(path: &Path) -> Result<Header, NetcdfError> {
+    contain(|| read_header_trusting(path))
+        .unwrap_or_else(|words| Err(NetcdfError::Damaged { path: path.to_owned(), problem: words }))
+}
+
+/// The same; damaged bytes may make a library panic.
+fn read_header_trusting(path: &Path) -> Result<Header, NetcdfError> {
     let library = |action: &str, problem: String| NetcdfError::Library {
         path: path.to_owned(),
         action: action.to_owned(),

@@ -191,6 +191,11 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             }
         }
     }
+    if let (Some(wanted_m), Some(found_m)) = (options.height_m, height_m)
+        && (wanted_m - found_m).abs() > 1e-6
+    {
+        return Err(refuse(format!("it is at {found_m} m, but `wind.height_m` asks for {wanted_m} m")));
+    }
     let [step, row, column] = places;
     let time = step.map(|place| names[place].to_owned());
     let grid = grid(reader, variable, &names, row, column, options)?;

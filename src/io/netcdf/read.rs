@@ -2,6 +2,7 @@
 
 use super::error::NetcdfError;
 use super::header::{ChunkPlace, Chunks, Filter, Header, NumberType, Storage, Variable};
+use crate::io::contain::contain;
 use libdeflater::Decompressor;
 use std::cell::RefCell;
 use std::fs::File;
@@ -26,6 +27,7 @@ thread_local! {
 struct Scratch {
     stored: Vec<u8>,
     inflated: Vec<u8>,
+    plain: Vec<u8>,
     inflater: Option<Decompressor>,
 }
 
@@ -280,6 +282,12 @@ impl Reader {
             match filter {
                 Filter::Fletcher32 => {
                     let data = if loaded.inflated { &mut scratch.inflated } else { &mut scratch.stored };
+                    // Where the checksum was taken before shuffling, it was shuffled along with the data.
+                    if loaded.shuffled {
+                        unshuffle(data, &mut scratch.plain, number.size());
+                        std::mem::swap(data, &mut scratch.plain);
+                        loaded.shuffled = false;
+                    }
                     let Some(length) = data.len().checked_sub(4) else {
                         return Err(damaged("is shorter than its checksum"));
                     };
@@ -327,7 +335,9 @@ impl Reader {
                 wanted.index(step, *node, &mut index);
                 let extents: Vec<std::ops::Range<usize>> =
                     index.iter().map(|at| *at as usize..*at as usize + 1).collect();
-                let value: Vec<f64> = found.get_values(extents).map_err(|error| failed(error.to_string()))?;
+                let value: Vec<f64> = contain(|| found.get_values(extents))
+                    .map_err(&failed)?
+                    .map_err(|error| failed(error.to_string()))?;
                 values.push(value.first().copied().unwrap_or(f64::NAN));
             }
         }
@@ -343,6 +353,17 @@ struct Loaded {
     /// The data are in `Scratch::inflated`, else in `Scratch::stored`.
     inflated: bool,
     shuffled: bool,
+}
+
+/// Undoes HDF5's shuffle: planes of first bytes, second bytes ... become values; bytes beyond the last whole value stand as
+/// they are.
+fn unshuffle(shuffled: &[u8], plain: &mut Vec<u8>, size: usize) {
+    let count = shuffled.len() / size;
+    plain.clear();
+    for element in 0..count {
+        plain.extend((0..size).map(|byte| shuffled[byte * count + element]));
+    }
+    plain.extend_from_slice(&shuffled[count * size..]);
 }
 
 /// Number of an element, last dimension fastest.

@@ -11,6 +11,8 @@ pub(super) struct Role {
     pub(super) key: &'static str,
     pub(super) standard_names: &'static [&'static str],
     pub(super) short_names: &'static [&'static str],
+    /// Short names that carry their height as a number: u10, u100.
+    pub(super) numbered: &'static [&'static str],
     /// Words of a long name, all of which must be there.
     pub(super) long_words: &'static [&'static str],
 }
@@ -34,7 +36,8 @@ pub(super) const EASTWARD: Role = Role {
         "u",
         "uwind",
     ],
-    long_words: &["10 metre u wind"],
+    numbered: &["u", "u_"],
+    long_words: &["metre u wind"],
 };
 pub(super) const NORTHWARD: Role = Role {
     wanted: "the northward wind",
@@ -55,13 +58,15 @@ pub(super) const NORTHWARD: Role = Role {
         "v",
         "vwind",
     ],
-    long_words: &["10 metre v wind"],
+    numbered: &["v", "v_"],
+    long_words: &["metre v wind"],
 };
 pub(super) const SPEED: Role = Role {
     wanted: "the wind speed",
     key: "wind.speed",
     standard_names: &["wind_speed"],
     short_names: &["wspd", "si10", "10si", "ws10", "wind", "sfcwind", "wind_speed", "windspeed", "ff", "wnd"],
+    numbered: &["ws", "si", "wspd"],
     long_words: &["wind speed"],
 };
 pub(super) const DIRECTION: Role = Role {
@@ -69,6 +74,7 @@ pub(super) const DIRECTION: Role = Role {
     key: "wind.direction",
     standard_names: &["wind_from_direction", "wind_to_direction"],
     short_names: &["wdir", "wd10", "wind_direction", "winddir", "dd", "wnddir"],
+    numbered: &["wd", "wdir"],
     long_words: &["wind", "direction"],
 };
 
@@ -103,22 +109,32 @@ impl Role {
             .filter(|variable| variable.text("standard_name").is_some_and(|name| self.standard_names.contains(&name)))
             .collect();
         let found = if standard.is_empty() {
-            fields(header)
-                .filter(|variable| {
-                    let name = variable.name.to_lowercase();
-                    let long = variable.text("long_name").unwrap_or_default().to_lowercase();
-                    self.short_names.contains(&name.as_str())
-                        || (!long.is_empty() && self.long_words.iter().all(|word| long.contains(word)))
-                })
-                .collect()
+            fields(header).filter(|variable| !is_something_else(variable) && self.is_named(variable)).collect()
         } else {
             standard
         };
         match found[..] {
             [] => Ok(None),
-            [one] => Ok(Some(one)),
+            [one]
+                if options.height_m.is_none() || height_in_name_m(one).is_none_or(|m| Some(m) == options.height_m) =>
+            {
+                Ok(Some(one))
+            }
             _ => self.of_height(header, &found, options).map(Some),
         }
+    }
+
+    /// Whether a variable has one of the role's short names or its long name.
+    fn is_named(&self, variable: &Variable) -> bool {
+        let name = variable.name.to_lowercase();
+        let long = variable.text("long_name").unwrap_or_default().to_lowercase();
+        let numbered = self.numbered.iter().any(|start| {
+            let number = name.strip_prefix(start).map(|rest| rest.trim_end_matches('m'));
+            number.is_some_and(|number| !number.is_empty() && number.bytes().all(|byte| byte.is_ascii_digit()))
+        });
+        numbered
+            || self.short_names.contains(&name.as_str())
+            || (!long.is_empty() && self.long_words.iter().all(|word| long.contains(word)))
     }
 
     /// Of several variables the one at the height that is wanted, 10 m unless the study says another.
@@ -142,6 +158,15 @@ impl Role {
             key: self.key,
         })
     }
+}
+
+/// Whether a variable's standard name says that it is another quantity than its short name suggests: `u` may be a current,
+/// `wind` a single component. Some converters write "unknown", which says nothing.
+fn is_something_else(variable: &Variable) -> bool {
+    let Some(standard) = variable.text("standard_name").map(str::to_lowercase) else { return false };
+    let of_a_role =
+        [&EASTWARD, &NORTHWARD, &SPEED, &DIRECTION].iter().any(|role| role.standard_names.contains(&standard.as_str()));
+    of_a_role || !(standard.contains("wind") || standard == "unknown")
 }
 
 /// The height that a variable's name or long name carries: u10 is at 10 m, "100 metre U wind component" at 100 m.

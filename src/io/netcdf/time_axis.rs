@@ -49,7 +49,7 @@ pub(super) fn decode(
     };
     let mut notes = Vec::new();
     let named = calendar.map(str::to_owned).or_else(|| variable.text("calendar").map(str::to_owned));
-    let calendar = match &named {
+    let mut calendar = match &named {
         None => Calendar::Standard,
         Some(name) => Calendar::from_name(name).ok_or_else(|| {
             refuse(format!("its calendar is \"{name}\", which is not known (set `wind.calendar` to the right one)"))
@@ -58,6 +58,15 @@ pub(super) fn decode(
     let units = parse_units(&text, calendar).map_err(|why| {
         refuse(format!("its units are \"{text}\": {why}; expected such as \"hours since 1900-01-01 00:00:00\" (set `wind.time_units`)"))
     })?;
+    if calendar == Calendar::Standard && units.reference.year == 0 {
+        // The mixed calendar has no year zero (1 BC is followed by AD 1); the proleptic one counts it. By an old custom
+        // (COARDS, 1995) such times are those of a climatology.
+        calendar = Calendar::ProlepticGregorian;
+        notes.push(format!(
+            "time variable `{}` counts from year 0: a climatology by old custom; its steps keep their dates in year 0 and stand for no date of a record",
+            variable.name
+        ));
+    }
     if variable.number_type() == Some(NumberType::F32) {
         notes.push(format!(
             "time variable `{}` is stored in single precision, which may resolve minutes only",
@@ -238,6 +247,47 @@ mod tests {
             assert_eq!(reference_unix_ms(&text).unwrap(), plain - (hours * 3.6e6) as i64, "{text}");
         }
         assert!(reference_unix_ms("hours since 2020-01-01 00:00:00 CEST").unwrap_err().contains("cest"));
+    }
+
+    // Facts of real files (DATA.md beside them), read there with netCDF4 1.7.5 and cftime.
+    #[test]
+    fn real_times_with_zones_and_model_calendars() {
+        let folder = std::env::var_os("UNDERWIND_REAL_DATA").map_or_else(
+            || std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("../shared/data"),
+            std::path::PathBuf::from,
+        );
+        for (name, count, first, last) in [
+            ("just_time_UTC.nc", 288, "2024-01-01T00:00:00Z", "2024-01-03T23:45:00Z"),
+            ("just_time_naive.nc", 288, "2024-01-01T00:00:00Z", "2024-01-03T23:45:00Z"),
+            ("just_time_offset-7.nc", 288, "2024-01-01T07:00:00Z", "2024-01-04T06:45:00Z"),
+        ] {
+            let path = folder.join(name);
+            if !path.is_file() {
+                println!("skipped: no real data folder {}", folder.display());
+                return;
+            }
+            let axis = decode_file(&path).unwrap();
+            assert!(axis.steps.windows(2).all(|pair| pair[1].unwrap().0 - pair[0].unwrap().0 == 900_000), "{name}");
+            let ends = [axis.steps[0], axis.steps[count - 1]].map(|step| step.unwrap().iso());
+            assert_eq!((axis.steps.len(), ends), (count, [first, last].map(str::to_owned)), "{name}");
+        }
+        // A year of twelve months of 30 days: its 30 February is no date, so the whole axis cannot be placed; the last step
+        // is 20 May 1906.
+        let path = folder.join("ref_test_360_day_1900.nc");
+        let refused = decode_file(&path).unwrap_err().to_string();
+        assert!(
+            refused.ends_with(
+                "variable `time`: step 58 is 1900-02-29 in the calendar 360_day, a date that does not exist in reality"
+            ),
+            "{refused}"
+        );
+        let start = Calendar::Days360.day_number(Date { year: 1900, month: 1, day: 1 });
+        assert_eq!(Calendar::Days360.date_of(start + 2299), Date { year: 1906, month: 5, day: 20 });
+    }
+
+    fn decode_file(path: &std::path::Path) -> Result<TimeAxis, NetcdfError> {
+        let reader = Reader::open(super::super::wind::read_header(path)?)?;
+        decode(&reader, reader.header.variable("time").unwrap(), None, None)
     }
 
     #[test]

@@ -109,13 +109,16 @@ pub fn open_wind(source: SourceId, files: &[PathBuf], options: &WindOptions) -> 
     }
     let max_gap_ms = options.max_gap_ms.unwrap_or_else(|| BRIDGED_STEPS * usual_step_ms(&steps));
     let height_m = options.height_m.or(first.placement.height_m);
+    if let Some(height_m) = height_m.filter(|height_m| options.height_m.is_none() && (height_m - 10.0).abs() > 1e-6) {
+        notes.push(format!("the wind is that at {height_m} m, not at 10 m (set `wind.height_m` to choose or confirm)"));
+    }
     notes.dedup();
     let meta = FieldMeta { source, layout: Layout::Rectilinear, grid, steps, height_m, flags, notes };
     Ok(WindSource { meta, kind, readers, parts, max_gap_ms, variables })
 }
 
 /// Reads a file's header, whichever format it has.
-fn read_header(path: &Path) -> Result<Header, NetcdfError> {
+pub(super) fn read_header(path: &Path) -> Result<Header, NetcdfError> {
     match sniff(path)? {
         Format::Classic(version) => classic::read_header(path, version),
         Format::Hdf5 => hdf5::read_header(path),

@@ -2,50 +2,26 @@
 
 use super::error::ParquetError;
 use super::pages::check_chunk;
+use crate::io::contain::contain;
 use polars::prelude::{
     ArrowDataType, ArrowTimeUnit, DataFrame, DataType, ParallelStrategy, ParquetReader, SerReader, TimeUnit,
 };
-use std::cell::Cell;
 use std::collections::HashMap;
 use std::fs::File;
 use std::io::{Read, Seek, SeekFrom};
-use std::panic::AssertUnwindSafe;
 use std::path::{Path, PathBuf};
-use std::sync::Once;
 
 /// A panic of the library on a damaged file.
 #[derive(Debug, thiserror::Error)]
 #[error("the Parquet library gave up: {0}")]
 struct GaveUp(String);
 
-thread_local! {
-    /// Whether panics on this thread are expected and caught.
-    static CAUGHT: Cell<bool> = const { Cell::new(false) };
-}
-
-/// Runs the library so that a panic on damaged bytes is an error. The library trusts much of what a file says; a panic
-/// is its usual answer to bytes that contradict each other. The message that a panic prints is kept back on this thread.
+/// Runs the library so that a panic on damaged bytes is an error.
 fn caught<T>(path: &Path, act: impl FnOnce() -> Result<T, polars::error::PolarsError>) -> Result<T, ParquetError> {
-    static HOOK: Once = Once::new();
-    HOOK.call_once(|| {
-        let before = std::panic::take_hook();
-        std::panic::set_hook(Box::new(move |info| {
-            if !CAUGHT.get() {
-                before(info);
-            }
-        }));
-    });
-    CAUGHT.set(true);
-    let ended = std::panic::catch_unwind(AssertUnwindSafe(act));
-    CAUGHT.set(false);
-    let source: Box<dyn std::error::Error + Send + Sync> = match ended {
+    let source: Box<dyn std::error::Error + Send + Sync> = match contain(act) {
         Ok(Ok(value)) => return Ok(value),
         Ok(Err(error)) => Box::new(error),
-        Err(panic) => {
-            let text = panic.downcast_ref::<String>().cloned();
-            let text = text.or_else(|| panic.downcast_ref::<&str>().map(|text| (*text).to_owned()));
-            Box::new(GaveUp(text.unwrap_or_else(|| "no reason given".to_owned())))
-        }
+        Err(words) => Box::new(GaveUp(words)),
     };
     Err(ParquetError::Damaged { path: path.to_owned(), source })
 }

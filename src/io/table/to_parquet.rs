@@ -5,9 +5,9 @@ use crate::io::replace_file::ReplaceFile;
 use crate::model::{ColumnData, Table};
 use polars::polars_utils::compression::ZstdLevel;
 use polars::prelude::{
-    BatchedWriter, BooleanChunked, Column, DataFrame, DataType, Float64Chunked, Int64Chunked, IntoColumn, IntoSeries,
-    NamedFrom, NewChunkedArray, ParquetCompression, ParquetWriter, PlSmallStr, Series, StatisticsOptions,
-    StringChunked, TimeUnit, TimeZone,
+    BatchedWriter, BooleanChunked, ChunkFull, ChunkFullNull, Column, DataFrame, DataType, Float64Chunked, Int64Chunked,
+    IntoColumn, IntoSeries, NamedFrom, NewChunkedArray, ParquetCompression, ParquetWriter, PlSmallStr, Series,
+    StatisticsOptions, StringChunked, TimeUnit, TimeZone,
 };
 use std::io::{BufWriter, Write};
 use std::path::{Path, PathBuf};
@@ -101,12 +101,23 @@ fn series(name: &str, data: &ColumnData) -> Result<Column, polars::error::Polars
     let name = PlSmallStr::from_str(name);
     let series: Series = match data {
         ColumnData::Text { texts, codes } => {
-            let values = codes.iter().map(|code| texts.get(*code as usize).map(String::as_str));
-            StringChunked::from_iter_options(name, values).into_series()
+            // Most text columns say one thing throughout, or nothing: those need no pass over the rows.
+            match codes.first().map(|first| (codes.iter().all(|code| code == first), texts.get(*first as usize))) {
+                Some((true, Some(text))) => StringChunked::full(name, text, codes.len()).into_series(),
+                Some((true, None)) => StringChunked::full_null(name, codes.len()).into_series(),
+                _ => {
+                    let values = codes.iter().map(|code| texts.get(*code as usize).map(String::as_str));
+                    StringChunked::from_iter_options(name, values).into_series()
+                }
+            }
         }
         ColumnData::Number(values) => {
-            let values = values.iter().map(|value| (!value.is_nan()).then_some(*value));
-            Float64Chunked::from_iter_options(name, values).into_series()
+            if values.iter().any(|value| value.is_nan()) {
+                let values = values.iter().map(|value| (!value.is_nan()).then_some(*value));
+                Float64Chunked::from_iter_options(name, values).into_series()
+            } else {
+                Float64Chunked::from_slice(name, values).into_series()
+            }
         }
         ColumnData::Integer(values) => Int64Chunked::from_slice(name, values).into_series(),
         ColumnData::Time(values) => {

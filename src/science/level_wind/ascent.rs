@@ -63,7 +63,7 @@ impl Ascent {
                 let evaluation = counts.evaluate(&trial, free);
                 let value = counts.total(&evaluation.log_density);
                 if value >= self.value {
-                    self.ended = value - self.value <= 1e-9 * value.abs();
+                    self.ended = value - self.value <= 1e-8 * value.abs();
                     self.at = trial;
                     self.evaluation = evaluation;
                     self.value = value;

@@ -337,6 +337,35 @@ fn table_change(table: &CornerTable, parameter: usize, changes: &[f64], loss: Lo
     moved.iter().zip(table.h.values()).map(|(moved, plain)| (moved - plain) / step).collect()
 }
 
+/// Moves replicates by the difference between two fits of all data, so that they surround the better one. Bends stay within
+/// `bends`, so that those at an edge remain there.
+pub(crate) fn move_replicates(
+    replicates: &mut [Replicate],
+    from: &Parameters,
+    to: &Parameters,
+    bends: Bend,
+    curve_shift_db: &[f64],
+) {
+    for replicate in replicates {
+        let at = &mut replicate.at;
+        for index in 0..at.floor_db.len() {
+            at.floor_db[index] += to.floor_db[index] - from.floor_db[index];
+            at.wind_db[index] += to.wind_db[index] - from.wind_db[index];
+        }
+        at.slope += to.slope - from.slope;
+        at.post_slope += to.post_slope - from.post_slope;
+        if let Bend::Within(low, high) = bends {
+            let inside = at.bend > low && at.bend < high;
+            if inside {
+                at.bend = (at.bend + to.bend - from.bend).clamp(low, high);
+            }
+        }
+        for (level, shift) in replicate.curve_db.iter_mut().zip(curve_shift_db) {
+            *level += shift;
+        }
+    }
+}
+
 /// Winds in m/s of an interval in x.
 pub(crate) fn winds_of((low, high): (f64, f64)) -> (f64, f64) {
     (wind_of(low), wind_of(high))

@@ -14,6 +14,8 @@ pub(crate) fn predicted_quantiles_db(scatter: &Scatter, excess_db: f64) -> [f64;
     /// Nodes of the wind part in its standard deviations (three-point Gauss-Hermite).
     const WIND_NODES: [(f64, f64); 3] =
         [(-1.732_050_807_568_877_2, 1.0 / 6.0), (0.0, 2.0 / 3.0), (1.732_050_807_568_877_2, 1.0 / 6.0)];
+    /// Outliers rarer than this do not move a 10 % quantile.
+    const NEGLIGIBLE_SHARE: f64 = 2e-3;
     let winds: &[(f64, f64)] = if scatter.wind_sd_db > 0.0 { &WIND_NODES } else { &[(0.0, 1.0)] };
     let mut nodes = Vec::new();
     for (floor, floor_weight) in floor_nodes(scatter) {
@@ -29,10 +31,12 @@ pub(crate) fn predicted_quantiles_db(scatter: &Scatter, excess_db: f64) -> [f64;
                     let z = (level - node - shift) / scatter.total_sd_db.max(0.1);
                     0.5 * libm::erfc(-z / std::f64::consts::SQRT_2)
                 };
-                let outliers: f64 =
-                    OUTLIERS_DB.iter().map(|shift| tail(*shift)).sum::<f64>() / OUTLIERS_DB.len() as f64;
+                if scatter.outlier_share < NEGLIGIBLE_SHARE {
+                    return weight * tail(0.0);
+                }
+                let outliers: f64 = OUTLIERS_DB.iter().map(|shift| tail(*shift)).sum();
                 let share = scatter.outlier_share;
-                weight * if share > 0.0 { (1.0 - share) * tail(0.0) + share * outliers } else { tail(0.0) }
+                weight * ((1.0 - share) * tail(0.0) + share * outliers / OUTLIERS_DB.len() as f64)
             })
             .sum()
     };

@@ -7,7 +7,7 @@ use super::options::Options;
 use super::point::{PointFit, check};
 use super::record::Record;
 use super::{outcome, resolve, summary};
-use crate::model::{LevelLaw, NotResolved, RELATION_SCHEMA, Relation, Resolved, Verdict};
+use crate::model::{LevelLaw, NotResolved, RELATION_SCHEMA, Relation, RelationDiagnostics, Resolved, Verdict};
 use crate::numerics::quantile::median;
 use rayon::prelude::*;
 use std::sync::Arc;
@@ -90,12 +90,13 @@ fn draws(site: &SiteRecord<'_>, fits: &[&PointFit], options: &Options) -> Option
 }
 
 /// Length of the blocks that are resampled: twice that of the band that remembers longest, but not more than twice the
-/// site's median (a single odd band must not coarsen all intervals), and at most one eighth of the record.
+/// site's median (a single odd band must not coarsen all intervals); at least a thousandth of the record (more blocks cost
+/// memory and bring nothing), and at most one eighth of it.
 fn resampled_block_h(fits: &[&PointFit]) -> Option<f64> {
     let lengths: Vec<f64> = fits.iter().map(|fit| fit.block_h).collect();
     let longest = lengths.iter().copied().reduce(f64::max)?;
     let span_h = fits.iter().map(|fit| fit.band.record.span_h()).fold(0.0, f64::max);
-    Some((2.0 * longest.min(2.0 * median(&lengths))).min(span_h / 8.0))
+    Some((2.0 * longest.min(2.0 * median(&lengths))).max(span_h / 1000.0).min(span_h / 8.0))
 }
 
 /// Row sums of replicates, computed once for all bands with the same samples and rows.
@@ -140,7 +141,7 @@ fn constant_relation(why: NotResolved, record: &Record) -> Relation {
 
 /// A fit without intervals: floor and knee as they are.
 fn point_relation(fit: &PointFit) -> Relation {
-    let at = &fit.at;
+    let at = &fit.band.polish_samples(Law::Knee, Corner::Floor, &fit.at);
     let curve = summary::mean_curve(&fit.band, Law::Knee, Corner::Floor, at, 0);
     Relation {
         schema: RELATION_SCHEMA,
@@ -159,9 +160,12 @@ fn point_relation(fit: &PointFit) -> Relation {
         curve: Some(curve),
         selected: None,
         scatter: Some(summary::scatter_of(fit)),
-        deployments: summary::deployment_points(fit),
+        deployments: summary::deployment_points(fit, at),
         deployment_difference: None,
-        diagnostics: summary::point_diagnostics(fit),
+        diagnostics: RelationDiagnostics {
+            fitted_onset_m_s: Some(wind_of(at.bend)),
+            ..summary::point_diagnostics(fit)
+        },
         warnings: Vec::new(),
         replicates: None,
     }

@@ -62,7 +62,7 @@ pub fn search_lag(
     let blocks: Vec<usize> = aligned
         .times_ms
         .iter()
-        .map(|time| ((time - first) as f64 / 3.6e6 / block_h.max(step_h)).floor() as usize)
+        .map(|time| ((i128::from(*time) - i128::from(first)) as f64 / 3.6e6 / block_h.max(step_h)).floor() as usize)
         .collect();
     let compact = compact(&blocks);
     let count = compact.last()? + 1;

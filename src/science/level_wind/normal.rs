@@ -1,7 +1,5 @@
 //! Normal equations of a curve at rows, in arrow form: blocks of single deployments and a block that they share.
 
-#![expect(clippy::needless_range_loop, reason = "rows and columns of small matrices read best by index")]
-
 use super::corner::top_offset_db;
 use super::law::{Corner, Law, Parameters, wind_term};
 use super::options::Segments;
@@ -45,8 +43,6 @@ pub(crate) struct Linearised {
 impl Linearised {
     /// Residuals and Jacobian at the parameters.
     pub(crate) fn fill(&mut self, rows: &RowMeans<'_>, form: &Form<'_>, at: &Parameters) {
-        self.residual_db.clear();
-        self.columns.iter_mut().for_each(Vec::clear);
         // Each law gets its own loop without a branch on the law.
         match form.law {
             Law::Line => self.fill_law(Law::Line, rows, form, at),
@@ -62,14 +58,22 @@ impl Linearised {
     fn fill_law(&mut self, law: Law, rows: &RowMeans<'_>, form: &Form<'_>, at: &Parameters) {
         let count = rows.x.len();
         self.residual_db.resize(count, 0.0);
-        self.columns.iter_mut().for_each(|column| column.resize(count, 0.0));
-        let [by_floor, by_wind, by_slope, by_bend, by_post] = &mut self.columns;
+        for column in &mut self.columns {
+            column.resize(count, 0.0);
+        }
         let bare = top_offset_db(form.table);
         let with_floor = form.corner == Corner::Floor;
         for (deployment, edges) in rows.starts.windows(2).enumerate() {
             let (floor, wind_db) = (at.floor_db[deployment], at.wind_db[deployment]);
-            for row in edges[0]..edges[1] {
-                let term = wind_term(law, at.slope, at.bend, at.post_slope, rows.x[row], form.width);
+            // Slices of one length, so that the loop needs no bounds checks.
+            let (start, length) = (edges[0], edges[1] - edges[0]);
+            let xs = &rows.x[start..][..length];
+            let levels = &rows.level_db[start..][..length];
+            let residuals = &mut self.residual_db[start..][..length];
+            let [by_floor, by_wind, by_slope, by_bend, by_post] =
+                self.columns.each_mut().map(|column| &mut column[start..][..length]);
+            for row in 0..length {
+                let term = wind_term(law, at.slope, at.bend, at.post_slope, xs[row], form.width);
                 let wind = wind_db + term.value;
                 let (fitted, share) = if with_floor {
                     let (above, share) = form.table.value_and_slope(wind - floor);
@@ -77,7 +81,7 @@ impl Linearised {
                 } else {
                     (wind + bare, 1.0)
                 };
-                self.residual_db[row] = rows.level_db[row] - fitted;
+                residuals[row] = levels[row] - fitted;
                 by_floor[row] = 1.0 - share;
                 by_wind[row] = share;
                 by_slope[row] = share * term.by_slope;
@@ -98,17 +102,22 @@ pub(crate) fn sum(
     weighted: &mut Vec<f64>,
     rows: &RowMeans<'_>,
     form: &Form<'_>,
+    bend_free: bool,
     residual_db: &[f64],
     columns: &[Vec<f64>; COLUMNS],
 ) {
-    match form.law {
-        Law::Line => sum_columns::<3>(normal, weighted, rows, form, residual_db, columns),
-        Law::Knee | Law::Quadratic | Law::Threshold => {
-            sum_columns::<4>(normal, weighted, rows, form, residual_db, columns);
-        }
-        Law::FreeKnee => sum_columns::<5>(normal, weighted, rows, form, residual_db, columns),
+    // Only the columns of free parameters are summed: most fits hold the bend.
+    let parts = (normal, weighted, rows, form, residual_db, columns);
+    match (form.law, bend_free) {
+        (Law::Line, _) | (Law::Knee | Law::Quadratic | Law::Threshold, false) => sum_columns(parts, [0, 1, 2]),
+        (Law::Knee | Law::Quadratic | Law::Threshold, true) => sum_columns(parts, [0, 1, 2, 3]),
+        (Law::FreeKnee, false) => sum_columns(parts, [0, 1, 2, 4]),
+        (Law::FreeKnee, true) => sum_columns(parts, [0, 1, 2, 3, 4]),
     }
 }
+
+/// What [`sum`] works on.
+type Parts<'a> = (&'a mut Normal, &'a mut Vec<f64>, &'a RowMeans<'a>, &'a Form<'a>, &'a [f64], &'a [Vec<f64>; COLUMNS]);
 
 /// Products of weights and values.
 fn weigh(weighted: &mut Vec<f64>, weight: &[f64], values: &[f64]) {
@@ -116,15 +125,9 @@ fn weigh(weighted: &mut Vec<f64>, weight: &[f64], values: &[f64]) {
     weighted.extend(weight.iter().zip(values).map(|(weight, value)| weight * value));
 }
 
-/// The first `USED` columns.
-fn sum_columns<const USED: usize>(
-    normal: &mut Normal,
-    weighted: &mut Vec<f64>,
-    rows: &RowMeans<'_>,
-    form: &Form<'_>,
-    residual_db: &[f64],
-    columns: &[Vec<f64>; COLUMNS],
-) {
+/// The columns picked; the first two are floor and wind part.
+fn sum_columns<const USED: usize>(parts: Parts<'_>, pick: [usize; USED]) {
+    let (normal, weighted, rows, form, residual_db, columns) = parts;
     normal.local.clear();
     normal.sum_squares = 0.0;
     normal.square = [[0.0; SHARED]; SHARED];
@@ -133,7 +136,7 @@ fn sum_columns<const USED: usize>(
         let range = edges[0]..edges[1];
         let weight = &rows.weight[range.clone()];
         let residual = &residual_db[range.clone()];
-        let columns: [&[f64]; USED] = std::array::from_fn(|index| &columns[index][range.clone()]);
+        let columns: [&[f64]; USED] = pick.map(|index| &columns[index][range.clone()]);
         weigh(weighted, weight, residual);
         normal.sum_squares += dot(weighted, residual);
         let gradient = columns.map(|column| dot(weighted, column));
@@ -144,7 +147,14 @@ fn sum_columns<const USED: usize>(
                 square[row][column] = dot(weighted, columns[column]);
             }
         }
-        normal.local.push(distribute(&square, &gradient, form.segments, &mut normal.square, &mut normal.gradient));
+        normal.local.push(distribute(
+            &square,
+            &gradient,
+            pick,
+            form.segments,
+            &mut normal.square,
+            &mut normal.gradient,
+        ));
     }
 }
 
@@ -152,6 +162,7 @@ fn sum_columns<const USED: usize>(
 fn distribute<const USED: usize>(
     square: &[[f64; USED]; USED],
     gradient: &[f64; USED],
+    pick: [usize; USED],
     segments: Segments,
     shared_square: &mut [[f64; SHARED]; SHARED],
     shared_gradient: &mut [f64; SHARED],
@@ -162,18 +173,18 @@ fn distribute<const USED: usize>(
         ..Local::default()
     };
     for row in 2..USED {
-        shared_gradient[row - 2] += gradient[row];
-        local.coupling[0][row - 2] = square[row][0];
-        local.coupling[1][row - 2] = square[row][1];
+        shared_gradient[pick[row] - 2] += gradient[row];
+        local.coupling[0][pick[row] - 2] = square[row][0];
+        local.coupling[1][pick[row] - 2] = square[row][1];
         for column in 2..=row {
-            shared_square[row - 2][column - 2] += square[row][column];
+            shared_square[pick[row] - 2][pick[column] - 2] += square[row][column];
         }
     }
     if matches!(segments, Segments::Floor | Segments::Offset) {
         shared_gradient[WIND] += gradient[1];
         shared_square[WIND][WIND] += square[1][1];
         for row in 2..USED {
-            shared_square[WIND][row - 2] += square[row][1];
+            shared_square[WIND][pick[row] - 2] += square[row][1];
         }
         local.coupling[0][WIND] = square[1][0];
     }
@@ -183,7 +194,7 @@ fn distribute<const USED: usize>(
         local.gradient[0] += gradient[1];
         local.coupling[0][WIND] += square[1][1];
         for row in 2..USED {
-            local.coupling[0][row - 2] += square[row][1];
+            local.coupling[0][pick[row] - 2] += square[row][1];
         }
     }
     local

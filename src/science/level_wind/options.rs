@@ -70,7 +70,7 @@ pub struct Options {
     /// Whether replicates are handed back.
     pub keep_replicates: KeepReplicates,
     /// Standard deviation of the error of the wind speed, m/s, for a corrected estimate beside the plain one
-    /// (see [`super::wind_error`]). It must be known from elsewhere; the pairs do not tell it.
+    /// (see [`super::correct_for_wind_error`]). It must be known from elsewhere; the pairs do not tell it.
     pub wind_error_sd_m_s: Option<f64>,
 }
 

@@ -2,7 +2,6 @@
 
 use super::bootstrap::{Replicate, values_of, winds_of};
 use super::draws::Draws;
-use super::fits::Fit;
 use super::law::{Corner, Law, Parameters, REFERENCE_WIND_M_S, wind_of};
 use super::options::{KeepReplicates, Loss, Options};
 use super::point::PointFit;
@@ -79,12 +78,13 @@ fn with_slope(
     let free_branch =
         found.branch.as_ref().filter(|_| matches!(found.verdict, Verdict::FallsAfterOnset | Verdict::SlopeBreak));
     let corner = if found.floor_resolved { Corner::Floor } else { Corner::Bare };
-    let encompassing = Reported { law: Law::Knee, corner: Corner::Floor, at: &fit.at, replicates: &found.replicates };
+    let encompassing =
+        Reported { law: Law::Knee, corner: Corner::Floor, at: &found.encompassing, replicates: &found.replicates };
     let clear = found.evidence.branch.as_ref().is_some_and(BranchEvidence::curved_clearly_better);
     let reported = match (curved, free_branch) {
-        (Some((law, full, replicates)), _) if clear => Reported { law: *law, corner, at: &full.at, replicates },
+        (Some((law, full, replicates)), _) if clear => Reported { law: *law, corner, at: full, replicates },
         (_, Some(branch)) => {
-            Reported { law: Law::FreeKnee, corner, at: &branch.free.at, replicates: &branch.free_replicates }
+            Reported { law: Law::FreeKnee, corner, at: &branch.free, replicates: &branch.free_replicates }
         }
         (_, None) => encompassing,
     };
@@ -111,7 +111,7 @@ fn with_slope(
             cover_rival(own, &|_, at| at.floor_db[index])
         } else {
             let floors = values_of(&found.replicates, |at| at.floor_db[index]);
-            Resolved::AtMost(quantile(&floors, 0.95).max(fit.at.floor_db[index]))
+            Resolved::AtMost(quantile(&floors, 0.95).max(found.encompassing.floor_db[index]))
         }
     };
     let wind_of_deployment = |index: usize| {
@@ -120,8 +120,8 @@ fn with_slope(
     };
     let (curve_band, at_10) = curve_band(fit, &reported, draws);
     let curve = summary::mean_curve(band, reported.law, reported.corner, reported.at, 0);
-    add_evidence(&mut figures, found, draws, fit);
-    let deployments = summary::deployment_points(fit)
+    add_evidence(&mut figures, found, draws);
+    let deployments = summary::deployment_points(fit, &found.encompassing)
         .into_iter()
         .enumerate()
         .map(|(index, point)| DeploymentFit {
@@ -140,7 +140,7 @@ fn with_slope(
         mean_square_pressure_exponent: slope.map(|slope| slope / 10.0),
         wind_component_at_10_m_s_db: wind_of_deployment(0),
         level_at_10_m_s_db: at_10,
-        onset_m_s: onset(fit, found, draws),
+        onset_m_s: onset(found, draws),
         post_onset_slope_db_per_decade: post_onset_slope(found, draws),
         curve_band,
         wind_classes: summary::wind_classes(&band.record, &curve),
@@ -159,13 +159,6 @@ fn with_slope(
         diagnostics: figures,
     };
     relation.warnings = warnings(fit, Some(found), &relation.diagnostics);
-    relation.diagnostics.residual_scale_ratio = Some(diagnostics::scale_ratio(fit)).filter(|ratio| ratio.is_finite());
-    if diagnostics::compare_spread(fit, &mut relation.wind_classes) > 0.2 {
-        relation.warnings.push(RelationWarning::ScatterMisfit);
-    }
-    if diagnostics::shape_misfit(fit, &found.replicates) {
-        relation.warnings.push(RelationWarning::ShapeMisfit);
-    }
     if curved.is_some() {
         relation.warnings.push(if clear {
             RelationWarning::CurvedLawReported
@@ -173,7 +166,21 @@ fn with_slope(
             RelationWarning::CurvedLawClose
         });
     }
+    judge_fit(fit, found, &mut relation);
     relation
+}
+
+/// Adds the diagnostics of spread and shape.
+fn judge_fit(fit: &PointFit, found: &Sloped, relation: &mut Relation) {
+    /// Share of wind classes whose spread may differ from the scatter model.
+    const MOST_MISFITS: f64 = 0.2;
+    relation.diagnostics.residual_scale_ratio = Some(diagnostics::scale_ratio(fit)).filter(|ratio| ratio.is_finite());
+    if diagnostics::compare_spread(fit, &mut relation.wind_classes) > MOST_MISFITS {
+        relation.warnings.push(RelationWarning::ScatterMisfit);
+    }
+    if diagnostics::shape_misfit(fit, &found.replicates) {
+        relation.warnings.push(RelationWarning::ShapeMisfit);
+    }
 }
 
 /// Slope at 10 m/s, dB per decade; of a knee, the slope below the onset.
@@ -207,17 +214,17 @@ fn curve_band(fit: &PointFit, reported: &Reported<'_>, draws: &Draws) -> (Vec<Cu
     (points, Resolved::with_interval(curve.level_db(REFERENCE_WIND_M_S), low, high))
 }
 
-fn onset(fit: &PointFit, found: &Sloped, draws: &Draws) -> Resolved {
+fn onset(found: &Sloped, draws: &Draws) -> Resolved {
     match found.verdict {
         Verdict::Saturation => {
             let (low, high) = winds_of(found.evidence.onset_interval);
-            Resolved::with_interval(wind_of(fit.at.bend), low, high)
+            Resolved::with_interval(wind_of(found.encompassing.bend), low, high)
         }
         Verdict::FallsAfterOnset | Verdict::SlopeBreak => match &found.branch {
             Some(branch) => {
                 let onsets = values_of(&branch.free_replicates, |at| at.bend);
                 let (low, high) = winds_of(draws.interval(&onsets, 0.95));
-                Resolved::with_interval(wind_of(branch.free.at.bend), low, high)
+                Resolved::with_interval(wind_of(branch.free.bend), low, high)
             }
             None => Resolved::NotResolved(NotResolved::NoOnset),
         },
@@ -232,7 +239,7 @@ fn post_onset_slope(found: &Sloped, draws: &Draws) -> Resolved {
     match (&found.branch, found.verdict) {
         (Some(branch), Verdict::Saturation | Verdict::FallsAfterOnset | Verdict::SlopeBreak) => {
             let (low, high) = draws.interval(&values_of(&branch.free_replicates, |at| at.post_slope), 0.95);
-            Resolved::with_interval(branch.free.at.post_slope, low, high)
+            Resolved::with_interval(branch.free.post_slope, low, high)
         }
         _ => Resolved::NotResolved(NotResolved::NoOnset),
     }
@@ -256,25 +263,30 @@ fn law_name(law: Law, corner: Corner) -> LevelLaw {
 /// The simplest law that the tests support.
 fn selected(fit: &PointFit, found: &Sloped, loss: Loss) -> SelectedFit {
     let corner = if found.floor_resolved { Corner::Floor } else { Corner::Bare };
-    let encompassing = Fit { at: fit.at.clone(), sum_squares: 0.0 };
-    let knee = if found.floor_resolved { &encompassing } else { &found.floorless };
+    let knee = match (&found.floorless_replicates, found.floor_resolved) {
+        (Some((floorless, _)), false) => floorless,
+        _ => &found.encompassing,
+    };
     let branch = found.branch.as_ref();
-    let (law, full) = match found.verdict {
+    let (law, at) = match found.verdict {
         Verdict::FallsAfterOnset | Verdict::SlopeBreak => {
             branch.map_or((Law::Knee, knee), |branch| (Law::FreeKnee, &branch.free))
         }
         Verdict::SlopeDecreases => {
-            branch.and_then(|branch| branch.curved.as_ref()).map_or((Law::Knee, knee), |(law, full, _)| (*law, full))
+            branch.and_then(|branch| branch.curved.as_ref()).map_or((Law::Knee, knee), |(law, at, _)| (*law, at))
         }
         Verdict::Saturation | Verdict::BelowOnly => (Law::Knee, knee),
         Verdict::NoOnset | Verdict::AboveOnly | Verdict::NoSlope | Verdict::PointOnly | Verdict::NotFitted => {
-            (Law::Line, &found.straight)
+            (Law::Line, &found.straight.at)
         }
     };
-    // Pseudo-values are about the fit with floor and knee; a law without one of them is settled on its own.
-    let scale_db = sample_scale_db(&fit.band, Law::Knee, &fit.at);
-    let at =
-        if law == Law::Line { settle_law(&fit.band, law, corner, &full.at, &scale_db, loss) } else { full.at.clone() };
+    // Pseudo-values are about the fit with floor and knee; a straight law is settled on its own.
+    let at = if law == Law::Line {
+        let scale_db = sample_scale_db(&fit.band, Law::Knee, &fit.at);
+        settle_law(&fit.band, law, corner, at, &scale_db, loss)
+    } else {
+        at.clone()
+    };
     let has_onset = matches!(law, Law::Knee | Law::FreeKnee);
     let offset = if corner == Corner::Bare { super::corner::top_offset_db(&fit.band.table.h) } else { 0.0 };
     SelectedFit {
@@ -307,7 +319,7 @@ fn deployment_difference(replicates: &[Replicate], draws: &Draws) -> DeploymentD
     }
 }
 
-fn add_evidence(diagnostics: &mut RelationDiagnostics, found: &Sloped, draws: &Draws, fit: &PointFit) {
+fn add_evidence(diagnostics: &mut RelationDiagnostics, found: &Sloped, draws: &Draws) {
     diagnostics.p_floor = Some(found.p_floor);
     diagnostics.p_onset = Some(found.evidence.p_onset);
     diagnostics.p_knee_given_curve = found.branch.as_ref().map(|branch| branch.p_knee_given_curve);
@@ -315,11 +327,11 @@ fn add_evidence(diagnostics: &mut RelationDiagnostics, found: &Sloped, draws: &D
     diagnostics.curved_gain = found.evidence.branch.as_ref().map(|branch| branch.curved_gain);
     diagnostics.storms_below_onset = Some(found.storms_below);
     diagnostics.storms_above_onset = Some(found.storms_above);
-    diagnostics.fitted_onset_m_s = Some(wind_of(fit.at.bend));
+    diagnostics.fitted_onset_m_s = Some(wind_of(found.encompassing.bend));
     diagnostics.fitted_onset_interval_m_s = Some(winds_of(found.evidence.onset_interval));
-    diagnostics.floorless_slope_db_per_decade = found.floorless_replicates.as_ref().map(|replicates| {
+    diagnostics.floorless_slope_db_per_decade = found.floorless_replicates.as_ref().map(|(at, replicates)| {
         let (low, high) = draws.interval(&values_of(replicates, |at| at.slope), 0.95);
-        Resolved::with_interval(found.floorless.at.slope, low, high)
+        Resolved::with_interval(at.slope, low, high)
     });
 }
 
@@ -327,14 +339,13 @@ fn warnings(fit: &PointFit, found: Option<&Sloped>, diagnostics: &RelationDiagno
     /// Fewest effectively independent samples that pass without a warning.
     const FEW_SAMPLES: f64 = 30.0;
     const MANY_REJECTED: f64 = 0.1;
-    let record = &fit.band.record;
     let mut warnings = Vec::new();
     let mut warn = |condition: bool, warning: RelationWarning| {
         if condition {
             warnings.push(warning);
         }
     };
-    warn(record.cells(fit.block_h, 0).count < super::need::LEAST_BLOCKS, RelationWarning::FewBlocks);
+    warn(fit.blocks().count < super::need::LEAST_BLOCKS, RelationWarning::FewBlocks);
     warn(
         diagnostics.effective_samples.is_some_and(|count| count < FEW_SAMPLES),
         RelationWarning::FewIndependentSamples,
@@ -347,7 +358,7 @@ fn warnings(fit: &PointFit, found: Option<&Sloped>, diagnostics: &RelationDiagno
         warn(fit.at.slope >= super::law::GREATEST_SLOPE - 0.1, RelationWarning::SlopeAtLimit);
         warn(found.verdict == Verdict::BelowOnly, RelationWarning::OnsetEdge);
     }
-    let deployments = summary::deployment_points(fit);
+    let deployments = summary::deployment_points(fit, &fit.at);
     warn(!deployments.is_empty(), RelationWarning::DeploymentsDiffer);
     let climates_differ = deployments.iter().any(|one| {
         let ratio = one.median_wind_m_s / deployments[0].median_wind_m_s;

@@ -1,6 +1,6 @@
 //! From a point estimate and its replicates to what can be said: tests, intervals, verdict.
 
-use super::bootstrap::{Replicas, Replicate, values_of};
+use super::bootstrap::{Replicas, Replicate, move_replicates, values_of};
 use super::cross_validation::Folds;
 use super::dependence::{Side, independent_storms};
 use super::fits::{Fit, Starts};
@@ -26,11 +26,11 @@ pub(crate) struct Sloped {
     pub(crate) floor_resolved: bool,
     pub(crate) evidence: Evidence,
     pub(crate) verdict: Verdict,
-    /// Replicates of the fit with floor and knee.
+    /// The fit with floor and knee on all samples, and its replicates.
+    pub(crate) encompassing: Parameters,
     pub(crate) replicates: Vec<Replicate>,
     /// Fit with a knee and no floor, and its replicates where the floor is not resolved.
-    pub(crate) floorless: Fit,
-    pub(crate) floorless_replicates: Option<Vec<Replicate>>,
+    pub(crate) floorless_replicates: Option<(Parameters, Vec<Replicate>)>,
     /// Straight law with the corner that was found.
     pub(crate) straight: Fit,
     pub(crate) branch: Option<Branch>,
@@ -42,16 +42,16 @@ pub(crate) struct Sloped {
 
 /// Fits of what may come after an onset.
 pub(crate) struct Branch {
-    pub(crate) free: Fit,
+    pub(crate) free: Parameters,
     pub(crate) free_replicates: Vec<Replicate>,
     pub(crate) p_knee_given_curve: f64,
     /// The curved law that predicts best, its fit and its replicates, where it predicts better than line and knee.
-    pub(crate) curved: Option<(Law, Fit, Vec<Replicate>)>,
+    pub(crate) curved: Option<(Law, Parameters, Vec<Replicate>)>,
 }
 
 /// Gathers the findings. `curve_x` are the points at which replicate curves are evaluated.
 pub(crate) fn findings(fit: &PointFit, replicas: &Replicas<'_>, options: &Options, curve_x: &[f64]) -> Findings {
-    let cells = fit.band.record.cells(fit.block_h, 0);
+    let cells = fit.blocks();
     let p_slope = if cells.count < need::LEAST_BLOCKS { 1.0 } else { need::p_no_rise(&fit.band, &cells, options.seed) };
     if p_slope > TEST_LEVEL {
         return Findings { p_slope, sloped: None };
@@ -73,10 +73,10 @@ fn sloped(fit: &PointFit, replicas: &Replicas<'_>, cells: &Cells, seed: u64, cur
     let corner = if floor_resolved { Corner::Floor } else { Corner::Bare };
     let begin = if floor_resolved { at } else { &floorless.at };
 
-    let replicates = replicas.fit(band, Law::Knee, Corner::Floor, at, curve_x);
+    let (encompassing, replicates) = resample(fit, replicas, Law::Knee, Corner::Floor, at, curve_x);
     let onsets = values_of(&replicates, |at| at.bend);
     let floorless_replicates =
-        (!floor_resolved).then(|| replicas.fit(band, Law::Knee, Corner::Bare, &floorless.at, &[]));
+        (!floor_resolved).then(|| resample(fit, replicas, Law::Knee, Corner::Bare, &floorless.at, &[]));
     let straight = band.fit(Law::Line, corner, begin, Starts::AndLine);
     let mut evidence = Evidence {
         p_onset,
@@ -85,8 +85,9 @@ fn sloped(fit: &PointFit, replicas: &Replicas<'_>, cells: &Cells, seed: u64, cur
             band.onsets.first().copied().unwrap_or(f64::NEG_INFINITY),
             band.onsets.last().copied().unwrap_or(f64::INFINITY),
         ),
-        onset: at.bend,
+        onset: encompassing.bend,
         onset_interval: replicas.draws.interval(&onsets, 0.95),
+        onset_lower: quantile(&onsets, 0.1),
         onset_upper: quantile(&onsets, 0.9),
         branch: None,
     };
@@ -106,8 +107,8 @@ fn sloped(fit: &PointFit, replicas: &Replicas<'_>, cells: &Cells, seed: u64, cur
         p_floor,
         floor_resolved,
         verdict,
+        encompassing,
         replicates,
-        floorless,
         floorless_replicates,
         straight,
         branch,
@@ -116,6 +117,25 @@ fn sloped(fit: &PointFit, replicas: &Replicas<'_>, cells: &Cells, seed: u64, cur
         storms_above: independent_storms(&band.record, cells, at.bend, Side::Above),
         evidence,
     }
+}
+
+/// A fit improved on all samples, and replicates around it.
+fn resample(
+    fit: &PointFit,
+    replicas: &Replicas<'_>,
+    law: Law,
+    corner: Corner,
+    at: &Parameters,
+    curve_x: &[f64],
+) -> (Parameters, Vec<Replicate>) {
+    let band = &fit.band;
+    let polished = band.polish_samples(law, corner, at);
+    let mut replicates = replicas.fit(band, law, corner, at, curve_x);
+    let form = band.form(law, corner).at_points();
+    let shift: Vec<f64> =
+        curve_x.iter().map(|&x| form.level(&polished, 0, x).level_db - form.level(at, 0, x).level_db).collect();
+    move_replicates(&mut replicates, at, &polished, band.bend(law), &shift);
+    (polished, replicates)
 }
 
 /// p value against no floor: candidates are hinges (c - x)+ with enough storms below c.
@@ -170,13 +190,14 @@ fn follow_branch(
         threshold: of_threshold.error,
     };
     let of_curve = if errors.quadratic <= errors.threshold { &of_quadratic } else { &of_threshold };
-    let free_replicates = replicas.fit(band, Law::FreeKnee, corner, &free.at, curve_x);
+    let (free_at, free_replicates) = resample(fit, replicas, Law::FreeKnee, corner, &free.at, curve_x);
     let post_slopes = values_of(&free_replicates, |at| at.post_slope);
     let evidence = BranchEvidence {
         errors,
         free_knee_error: folds.predictions(band, Law::FreeKnee, corner, &free).error,
         curved_gain: folds.gain(band, &of_knee, of_curve),
-        free_onset: free.at.bend,
+        free_onset: free_at.bend,
+        free_slope: free_at.slope,
         post_slope_95: replicas.draws.interval(&post_slopes, 0.95),
         post_slope_99: replicas.draws.interval(&post_slopes, 0.99),
     };
@@ -195,10 +216,10 @@ fn follow_branch(
         } else {
             (Law::Threshold, threshold)
         };
-        let replicates = replicas.fit(band, law, corner, &full.at, curve_x);
-        (law, full, replicates)
+        let (at, replicates) = resample(fit, replicas, law, corner, &full.at, curve_x);
+        (law, at, replicates)
     });
-    (Branch { free, free_replicates, p_knee_given_curve, curved }, evidence)
+    (Branch { free: free_at, free_replicates, p_knee_given_curve, curved }, evidence)
 }
 
 /// Lower bound of an onset that is not resolved, in x: the lower end of the 90 % profile interval, or the 5 % quantile of the

@@ -155,7 +155,7 @@ impl Solver {
         let mut damping = 1e-3;
         self.linearised.fill(rows, form, at);
         let (residual, columns) = (&self.linearised.residual_db, &self.linearised.columns);
-        sum(&mut self.current, &mut self.weighted, rows, form, residual, columns);
+        sum(&mut self.current, &mut self.weighted, rows, form, free.shared[BEND], residual, columns);
         for _ in 0..stop.iterations {
             let mut accepted = false;
             for _ in 0..6 {
@@ -163,7 +163,7 @@ impl Solver {
                     self.apply(form, bend, free, at);
                     self.linearised.fill(rows, form, &self.trial);
                     let (residual, columns) = (&self.linearised.residual_db, &self.linearised.columns);
-                    sum(&mut self.next, &mut self.weighted, rows, form, residual, columns);
+                    sum(&mut self.next, &mut self.weighted, rows, form, free.shared[BEND], residual, columns);
                     if self.next.sum_squares <= self.current.sum_squares {
                         accepted = true;
                         break;
@@ -197,7 +197,7 @@ impl Solver {
         at: &Parameters,
         stepped: &mut Parameters,
     ) -> f64 {
-        sum(&mut self.current, &mut self.weighted, rows, form, residual_db, columns);
+        sum(&mut self.current, &mut self.weighted, rows, form, false, residual_db, columns);
         let free = Free::of(form, Bend::Fixed);
         if !self.step(free, 1e-9, Bend::Fixed, at) {
             stepped.copy_from(at);

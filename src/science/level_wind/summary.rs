@@ -150,7 +150,7 @@ pub(crate) fn point_diagnostics(fit: &PointFit) -> RelationDiagnostics {
 }
 
 /// One entry per deployment, without intervals.
-pub(crate) fn deployment_points(fit: &PointFit) -> Vec<DeploymentFit> {
+pub(crate) fn deployment_points(fit: &PointFit, at: &Parameters) -> Vec<DeploymentFit> {
     let record = &fit.band.record;
     if fit.band.rows.deployments() < 2 {
         return Vec::new();
@@ -171,8 +171,8 @@ pub(crate) fn deployment_points(fit: &PointFit) -> Vec<DeploymentFit> {
                 deployment: label,
                 samples: winds.len(),
                 median_wind_m_s: median(&winds),
-                floor_db: Resolved::point(fit.at.floor_db[index]),
-                wind_component_at_10_m_s_db: Resolved::point(fit.at.wind_db[index]),
+                floor_db: Resolved::point(at.floor_db[index]),
+                wind_component_at_10_m_s_db: Resolved::point(at.wind_db[index]),
             }
         })
         .collect()

@@ -22,7 +22,9 @@ pub(crate) struct Evidence {
     /// Best onset with a flat upper branch, and its 95 % interval.
     pub(crate) onset: f64,
     pub(crate) onset_interval: (f64, f64),
-    /// 90 % quantile of the onset over replicates: beyond it the onset counts as open upwards.
+    /// 10 and 90 % quantiles of the onset over replicates: one that reaches an end of the onsets tried leaves the onset open
+    /// on that side.
+    pub(crate) onset_lower: f64,
     pub(crate) onset_upper: f64,
     /// Evidence that is only gathered when an onset is likely.
     pub(crate) branch: Option<BranchEvidence>,
@@ -36,6 +38,8 @@ pub(crate) struct BranchEvidence {
     pub(crate) free_knee_error: f64,
     /// Best onset when the slope above is free.
     pub(crate) free_onset: f64,
+    /// Slope below it in the same fit.
+    pub(crate) free_slope: f64,
     /// 95 and 99 % intervals of the slope above the onset.
     pub(crate) post_slope_95: (f64, f64),
     pub(crate) post_slope_99: (f64, f64),
@@ -78,7 +82,7 @@ impl Evidence {
 
     /// Whether the onset lies, or may lie, below all onsets tried.
     pub(crate) fn reaches_bottom(&self) -> bool {
-        self.onset < self.tried.0 + EDGE || (self.onset_interval.0 <= self.tried.0 + TOUCH && self.p_onset < TEST_LEVEL)
+        self.onset < self.tried.0 + EDGE || (self.onset_lower <= self.tried.0 + TOUCH && self.p_onset < TEST_LEVEL)
     }
 
     fn reaches_top(&self) -> bool {
@@ -105,6 +109,7 @@ impl Evidence {
             Verdict::Saturation
         } else if branch.free_knee_error < branch.curved_error().min(branch.errors.line)
             && branch.post_slope_99.0 > 0.0
+            && branch.post_slope_95.1 < branch.free_slope
             && inside
         {
             Verdict::SlopeBreak
@@ -125,11 +130,13 @@ mod tests {
             tried: (-0.4, 0.3),
             onset: 0.08,
             onset_interval: (0.05, 0.11),
+            onset_lower: 0.06,
             onset_upper: 0.1,
             branch: Some(BranchEvidence {
                 errors: PredictionErrors { line: 9.0, knee: 2.0, quadratic: 3.0, threshold: 4.0 },
                 free_knee_error: 2.1,
                 free_onset: 0.08,
+                free_slope: 30.0,
                 post_slope_95: (-6.0, 5.0),
                 post_slope_99: (-9.0, 8.0),
                 curved_gain: -2.0,
@@ -143,7 +150,7 @@ mod tests {
         assert_eq!(Evidence { p_onset: 0.2, ..saturating() }.verdict(), Verdict::NoOnset);
         assert_eq!(Evidence { straight_misfit_db: 0.01, ..saturating() }.verdict(), Verdict::NoOnset);
         assert_eq!(Evidence { onset: -0.39, ..saturating() }.verdict(), Verdict::BelowOnly);
-        assert_eq!(Evidence { onset_interval: (-0.4, 0.1), ..saturating() }.verdict(), Verdict::BelowOnly);
+        assert_eq!(Evidence { onset_lower: -0.4, ..saturating() }.verdict(), Verdict::BelowOnly);
         assert_eq!(Evidence { onset_upper: 0.3, ..saturating() }.verdict(), Verdict::AboveOnly);
     }
 
@@ -162,6 +169,11 @@ mod tests {
         assert_eq!(
             change(&|branch| (branch.post_slope_95, branch.post_slope_99) = ((4.0, 9.0), (2.0, 11.0))),
             Verdict::SlopeBreak
+        );
+        // A slope that grows is no break of a rise.
+        assert_eq!(
+            change(&|branch| (branch.post_slope_95, branch.post_slope_99) = ((40.0, 60.0), (35.0, 70.0))),
+            Verdict::SlopeDecreases
         );
         assert_eq!(
             change(&|branch| (branch.post_slope_95, branch.post_slope_99) = ((1.0, 9.0), (-2.0, 11.0))),

@@ -2,18 +2,16 @@
 
 use crate::model::{Flag, FlagSet, Grid, Missing, NodeId, Point, SpatialRule, Stencil};
 use crate::numerics::axis::Bracket;
+use geo::Distance;
+
+/// Distance along the sphere, km (haversine, mean radius of the Earth), to the millimetre: beyond that platforms differ.
+pub fn distance_km(a: Point, b: Point) -> f64 {
+    let place = |point: Point| geo::Point::new(point.longitude_deg(), point.latitude_deg());
+    (geo::Haversine.distance(place(a), place(b)) * 1e3).round() / 1e6
+}
 
 /// Mean radius of the Earth, km: (2a + b)/3 of WGS84 (NIMA TR8350.2).
 const EARTH_RADIUS_KM: f64 = 6_371.008_771_4;
-
-/// Distance along the sphere, km (haversine).
-pub fn distance_km(a: Point, b: Point) -> f64 {
-    let (lat_a, lat_b) = (a.latitude_deg().to_radians(), b.latitude_deg().to_radians());
-    let half_lat = 0.5 * (lat_b - lat_a);
-    let half_lon = 0.5 * (b.longitude_deg() - a.longitude_deg()).to_radians();
-    let h = libm::sin(half_lat).powi(2) + libm::cos(lat_a) * libm::cos(lat_b) * libm::sin(half_lon).powi(2);
-    2.0 * EARTH_RADIUS_KM * libm::asin(h.sqrt().min(1.0))
-}
 
 /// The nodes that a place needs under a rule.
 ///

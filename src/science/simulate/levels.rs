@@ -1,110 +1,105 @@
-//! Levels from stated laws. Everything adds in power.
+//! Levels from stated laws. Everything that sounds adds in power; noise of the measured level comes after.
 
-use super::random::Stream;
-use super::settings::{BandLaw, Settings};
-use crate::units::{db_of_power, power_of_db};
+use super::law::{BandLaw, law_level_db};
+use super::random::{Stream, purpose};
+use super::settings::Settings;
+use super::ships::{ShipVisit, ship_excess_db};
+use crate::units::{HOUR_MS, Instant, db_of_power, power_of_db};
 
-/// A passing ship.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct ShipVisit {
-    /// Nearest approach, hours since the start.
-    pub at_h: f64,
-    /// Half its duration, h.
-    pub half_h: f64,
-    /// Level over the floor at its nearest, dB, in a band of ship gain 0.
-    pub peak_db: f64,
+/// Least excess of an outlier, dB.
+const OUTLIER_LEAST_DB: f64 = 5.0;
+/// Shortest and mean further length of a gap, h.
+const GAP_H: [f64; 2] = [2.0, 10.0];
+
+/// The windows of a level table: equal, one after the other.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Windows {
+    /// Start of the first.
+    pub start: Instant,
+    /// Length of each, ms.
+    pub length_ms: i64,
+    /// How many.
+    pub count: usize,
 }
 
-/// Level that the law gives at a wind speed, dB, with this floor.
-pub fn law_level_db(law: &BandLaw, floor_db: f64, wind_speed_m_s: f64) -> f64 {
-    db_of_power(power_of_db(floor_db) + power_of_db(wind_part_db(law, wind_speed_m_s)))
-}
+impl Windows {
+    /// Start of a window.
+    pub fn start_of(&self, window: usize) -> Instant {
+        self.start.plus_ms(window as i64 * self.length_ms)
+    }
 
-fn wind_part_db(law: &BandLaw, wind_speed_m_s: f64) -> f64 {
-    let decades = |speed: f64| libm::log10(speed.max(0.1) / law.crossover_m_s);
-    let onset = law.onset_m_s.unwrap_or(f64::INFINITY);
-    let below = law.floor_db + law.slope_db_per_decade * decades(wind_speed_m_s.min(onset));
-    if wind_speed_m_s > onset {
-        below + law.post_onset_slope_db_per_decade * (decades(wind_speed_m_s) - decades(onset))
-    } else {
-        below
+    /// Length of a window, h.
+    pub fn length_h(&self) -> f64 {
+        self.length_ms as f64 / HOUR_MS as f64
+    }
+
+    /// Length of all windows, h.
+    pub fn total_h(&self) -> f64 {
+        self.length_h() * self.count as f64
     }
 }
 
-/// The ships of one site. They do not depend on the wind.
-pub fn simulate_ships(settings: &Settings, seed: u64, site: u64, hours: usize) -> Vec<ShipVisit> {
-    let mut ships = Vec::new();
-    if settings.ship_gap_h <= 0.0 {
-        return ships;
-    }
-    let mut stream = Stream::new(seed, 1000 + site);
-    let mut time_h = 0.0;
-    loop {
-        time_h += stream.exponential(settings.ship_gap_h);
-        if time_h >= hours as f64 {
-            return ships;
-        }
-        let half_h = 0.5 * settings.ship_duration_h * (0.7 + 0.6 * stream.uniform());
-        let [low, high] = settings.ship_peak_db;
-        ships.push(ShipVisit { at_h: time_h + half_h, half_h, peak_db: low + (high - low) * stream.uniform() });
-        time_h += 2.0 * half_h;
-    }
+/// What the levels of one band at one sensor are made from.
+#[derive(Debug, Clone, Copy)]
+pub struct LevelSeries<'a> {
+    /// The law, with the floor of the site.
+    pub law: &'a BandLaw,
+    /// The windows.
+    pub windows: Windows,
+    /// Mean wind speed of each window, m/s; NaN where there is none.
+    pub speeds_m_s: &'a [f64],
+    /// Ships of the site.
+    pub ships: &'a [ShipVisit],
+    /// Number of the sensor: its own random numbers.
+    pub sensor: u64,
+    /// Number of the band: its own random numbers.
+    pub band: u64,
 }
 
-/// Level of the ships over the floor in the hour that starts at `hour`, dB; minus infinity without ship. A passage rises and
-/// falls by 12 dB.
-fn ship_db(ships: &[ShipVisit], hour: usize) -> f64 {
-    let middle = hour as f64 + 0.5;
-    let power: f64 = ships
-        .iter()
-        .map(|ship| {
-            let away = (middle - ship.at_h) / ship.half_h;
-            if away.abs() <= 1.0 { power_of_db(ship.peak_db - 12.0 * away * away) } else { 0.0 }
-        })
-        .sum();
-    db_of_power(power)
-}
-
-/// Levels of one band at one site, one an hour, dB re 1 uPa^2; NaN in gaps. `site` and `band` number the random streams.
-pub fn simulate_levels(
-    settings: &Settings, seed: u64, site: u64, band: u64, law: &BandLaw, speeds_m_s: &[f64], ships: &[ShipVisit],
-) -> Vec<f64> {
-    let hours = speeds_m_s.len();
-    let purpose = 100_000 + site * 1000 + band;
-    let floor = Stream::new(seed, purpose).autoregressive(hours, settings.floor_h);
-    let slow = Stream::new(seed, 10_000_000 + purpose).autoregressive(hours, settings.slow_noise_h);
-    let mut white = Stream::new(seed, 20_000_000 + purpose);
-    let gaps = gaps(settings, seed, site, hours);
-    // Only ships near an hour matter to it.
-    let longest = settings.ship_duration_h * 1.3;
-    (0..hours)
-        .map(|hour| {
-            let noise = settings.slow_noise_sd_db * slow[hour] + settings.white_noise_sd_db * white.normal();
-            if gaps[hour] || speeds_m_s[hour].is_nan() {
-                return f64::NAN;
+/// Levels, one a window, dB re 1 uPa^2; NaN where there is no wind. The law is taken at the mean wind speed of the window;
+/// ships add their mean power; fluctuations of the whole level come last.
+pub fn simulate_levels(settings: &Settings, seed: u64, series: &LevelSeries<'_>) -> Vec<f64> {
+    let LevelSeries { law, windows, speeds_m_s, ships, sensor, band } = *series;
+    let length_h = windows.length_h();
+    let count = speeds_m_s.len();
+    let fluctuation =
+        |what: u64, scale_h: f64| Stream::new(seed, what, sensor, band).autoregressive(count, scale_h / length_h);
+    let floor = fluctuation(purpose::FLOOR, settings.floor_h);
+    let slow = fluctuation(purpose::SLOW_NOISE, settings.slow_noise_h);
+    let mut white = Stream::new(seed, purpose::WHITE_NOISE, sensor, band);
+    let mut outliers = Stream::new(seed, purpose::OUTLIERS, sensor, band);
+    (0..count)
+        .map(|k| {
+            let noise = settings.slow_noise_sd_db * slow[k] + settings.white_noise_sd_db * white.normal();
+            let (hit, excess) =
+                (outliers.uniform() < settings.outlier_share, outliers.exponential(settings.outlier_mean_db));
+            let outlier = if hit { OUTLIER_LEAST_DB + excess } else { 0.0 };
+            let start_h = k as f64 * length_h;
+            let ship = law.floor_db + law.ship_gain_db + ship_excess_db(ships, start_h, start_h + length_h);
+            let quiet = law_level_db(law, law.floor_db + settings.floor_sd_db * floor[k], speeds_m_s[k]);
+            if speeds_m_s[k].is_nan() {
+                f64::NAN
+            } else {
+                db_of_power(power_of_db(quiet) + power_of_db(ship)) + noise + outlier
             }
-            let floor_db = law.floor_db + settings.floor_sd_db * floor[hour];
-            let from = ships.partition_point(|ship| ship.at_h < hour as f64 - longest);
-            let to = ships.partition_point(|ship| ship.at_h < hour as f64 + 1.0 + longest);
-            let ship = floor_db + law.ship_gain_db + ship_db(&ships[from..to], hour);
-            let quiet = law_level_db(law, floor_db, speeds_m_s[hour]);
-            db_of_power(power_of_db(quiet) + power_of_db(ship)) + noise
         })
         .collect()
 }
 
-/// Hours that are lost, in runs of a few hours to days; the same for all bands of a site.
-fn gaps(settings: &Settings, seed: u64, site: u64, hours: usize) -> Vec<bool> {
-    let mut lost = vec![false; hours];
-    let mut stream = Stream::new(seed, 2000 + site);
-    let wanted = (settings.gap_share * hours as f64) as usize;
+/// Windows that are lost, in runs of a few hours to days; the same for all bands of a sensor.
+pub fn lost_windows(settings: &Settings, seed: u64, sensor: u64, windows: Windows) -> Vec<bool> {
+    let count = windows.count;
+    let mut lost = vec![false; count];
+    let mut stream = Stream::new(seed, purpose::GAPS, sensor, 0);
+    let wanted = (settings.gap_share * count as f64) as usize;
     let mut done = 0;
     while done < wanted {
-        let start = (stream.uniform() * hours as f64) as usize;
-        let length = (2.0 + stream.exponential(10.0)) as usize;
-        for hour in start..(start + length).min(hours) {
-            if !lost[hour] && done < wanted {
-                lost[hour] = true;
+        let start = (stream.uniform() * count as f64) as usize;
+        let length_h = GAP_H[0] + stream.exponential(GAP_H[1]);
+        let length = ((length_h / windows.length_h()) as usize).max(1);
+        for window in &mut lost[start..(start + length).min(count)] {
+            if !*window && done < wanted {
+                *window = true;
                 done += 1;
             }
         }
@@ -114,6 +109,7 @@ fn gaps(settings: &Settings, seed: u64, site: u64, hours: usize) -> Vec<bool> {
 
 #[cfg(test)]
 mod tests {
+    use super::super::ships::simulate_ships;
     use super::*;
 
     fn law() -> BandLaw {
@@ -122,38 +118,66 @@ mod tests {
             floor_db: 70.0,
             slope_db_per_decade: 30.0,
             crossover_m_s: 4.0,
-            onset_m_s: Some(12.0),
+            onset_m_s: None,
             post_onset_slope_db_per_decade: 0.0,
             ship_gain_db: 0.0,
         }
     }
 
+    fn hourly(count: usize) -> Windows {
+        Windows { start: Instant(0), length_ms: HOUR_MS, count }
+    }
+
+    fn levels(settings: &Settings, speeds_m_s: &[f64], ships: &[ShipVisit]) -> Vec<f64> {
+        let windows = hourly(speeds_m_s.len());
+        simulate_levels(settings, 1, &LevelSeries { law: &law(), windows, speeds_m_s, ships, sensor: 0, band: 0 })
+    }
+
+    fn silent() -> Settings {
+        Settings { slow_noise_sd_db: 0.0, white_noise_sd_db: 0.0, ..Settings::default() }
+    }
+
+    // Closed form: floor, wind part and ship of equal power are 10 log10 3 = 4.7712 dB above one of them.
     #[test]
-    fn equal_powers_add_three_decibels_and_the_law_stops_at_its_onset() {
-        // 10 log10 2 = 3.0103 dB at the crossover; closed forms.
-        assert!((law_level_db(&law(), 70.0, 4.0) - 73.010_299_956_6).abs() < 1e-9);
-        assert!((law_level_db(&law(), 70.0, 20.0) - law_level_db(&law(), 70.0, 12.0)).abs() < 1e-12);
-        let high = law_level_db(&law(), -200.0, 8.0) - law_level_db(&law(), -200.0, 4.0);
-        assert!((high - 30.0 * 2f64.log10()).abs() < 1e-9);
+    fn floor_wind_and_ship_add_in_power() {
+        let ship = ShipVisit { at_h: 0.5, half_h: 1e6, peak_db: 0.0 };
+        let level = levels(&silent(), &[4.0], &[ship])[0];
+        assert!((level - (70.0 + 4.771_212_547_196_6)).abs() < 1e-9, "{level}");
+        assert!((levels(&silent(), &[4.0], &[])[0] - 73.010_299_956_6).abs() < 1e-9);
     }
 
     #[test]
     fn ships_never_lower_a_level() {
-        let quiet = Settings { gap_share: 0.0, ..Settings::default() };
-        let busy = Settings { ship_gap_h: 8.0, ..quiet.clone() };
+        let busy = Settings { ship_gap_h: 8.0, ..Settings::default() };
         let speeds = vec![6.0; 2000];
-        let ships = simulate_ships(&busy, 1, 0, 2000);
+        let ships = simulate_ships(&busy, 1, 0, 2000.0);
         assert!(ships.len() > 100);
-        let without = simulate_levels(&quiet, 1, 0, 0, &law(), &speeds, &[]);
-        let with = simulate_levels(&busy, 1, 0, 0, &law(), &speeds, &ships);
+        let (without, with) = (levels(&busy, &speeds, &[]), levels(&busy, &speeds, &ships));
         assert!(without.iter().zip(&with).all(|(a, b)| b >= a));
         assert!(without.iter().zip(&with).filter(|(a, b)| *b > &(*a + 3.0)).count() > 100);
     }
 
     #[test]
-    fn gaps_take_their_share() {
-        let settings = Settings { gap_share: 0.1, ..Settings::default() };
-        let levels = simulate_levels(&settings, 1, 0, 0, &law(), &vec![6.0; 5000], &[]);
-        assert_eq!(levels.iter().filter(|level| level.is_nan()).count(), 500);
+    fn the_noise_has_its_size_and_its_memory() {
+        let settings = Settings { slow_noise_sd_db: 2.0, slow_noise_h: 8.0, white_noise_sd_db: 0.0, ..silent() };
+        let noise: Vec<f64> = levels(&settings, &vec![4.0; 200_000], &[]).iter().map(|level| level - 73.0103).collect();
+        let mean_product =
+            |lag: usize| noise.iter().zip(&noise[lag..]).map(|(a, b)| a * b).sum::<f64>() / (noise.len() - lag) as f64;
+        assert!((mean_product(0).sqrt() - 2.0).abs() < 0.1, "{}", mean_product(0));
+        // Closed form: correlation exp(-lag / 8 h) of a first-order autoregressive series.
+        for lag in [4, 8, 16] {
+            let correlation = mean_product(lag) / mean_product(0);
+            assert!((correlation - (-(lag as f64) / 8.0).exp()).abs() < 0.05, "{lag}: {correlation}");
+        }
+    }
+
+    #[test]
+    fn outliers_and_gaps_take_their_share() {
+        let settings = Settings { outlier_share: 0.05, ..silent() };
+        let high = levels(&settings, &vec![4.0; 20_000], &[]).iter().filter(|level| **level > 78.0).count();
+        assert!((high as f64 / 20_000.0 - 0.05).abs() < 0.006, "{high}");
+        let settings = Settings { gap_share: 0.1, ..silent() };
+        let lost = lost_windows(&settings, 1, 0, hourly(5000));
+        assert_eq!(lost.iter().filter(|lost| **lost).count(), 500);
     }
 }

@@ -1,10 +1,19 @@
-//! A deployment with known truth: an invented wind field, and levels from stated laws. Shares no code with the fit.
+//! A deployment with known truth: an invented wind field, and levels from stated laws. Shares no code with the fit or with
+//! the sampling of fields.
 
+mod law;
 mod levels;
 mod random;
 mod settings;
-mod wind;
+mod ships;
+mod site_wind;
+mod weather;
+mod wind_field;
 
-pub use levels::{ShipVisit, law_level_db, simulate_levels, simulate_ships};
-pub use settings::{BandLaw, Settings, WindOrigin};
-pub use wind::{PACKED_FILL, PACKED_SCALE_M_S, SiteWind, WindField, hourly_speed_m_s};
+pub use law::{BandLaw, law_level_db, wind_part_db};
+pub use levels::{LevelSeries, Windows, lost_windows, simulate_levels};
+pub use settings::{Settings, WindOrigin};
+pub use ships::{ShipVisit, ship_excess_db, simulate_ships};
+pub use site_wind::{SiteWind, mean_speed_m_s};
+pub use weather::Weather;
+pub use wind_field::{PACKED_FILL, PACKED_SCALE_M_S, WindField};

@@ -4,15 +4,28 @@ use rand::RngExt;
 use rand_chacha::ChaCha12Rng;
 use rand_chacha::rand_core::SeedableRng;
 
+/// What random numbers are drawn for.
+pub(super) mod purpose {
+    pub(in super::super) const WAVES: u64 = 1;
+    pub(in super::super) const FRONTS: u64 = 2;
+    pub(in super::super) const SHIPS: u64 = 3;
+    pub(in super::super) const GAPS: u64 = 4;
+    pub(in super::super) const FLOOR: u64 = 5;
+    pub(in super::super) const SLOW_NOISE: u64 = 6;
+    pub(in super::super) const WHITE_NOISE: u64 = 7;
+    pub(in super::super) const OUTLIERS: u64 = 8;
+}
+
 /// A stream of random numbers for one purpose.
 #[derive(Debug)]
 pub(super) struct Stream(ChaCha12Rng);
 
 impl Stream {
-    /// The stream of a purpose; different numbers give independent streams.
-    pub(super) fn new(seed: u64, purpose: u64) -> Self {
+    /// The stream of a purpose for one thing (a site or sensor) and one part of it (a band); different numbers give
+    /// independent streams.
+    pub(super) fn new(seed: u64, purpose: u64, thing: u64, part: u64) -> Self {
         let mut generator = ChaCha12Rng::seed_from_u64(seed);
-        generator.set_stream(purpose);
+        generator.set_stream((purpose << 56) | ((thing & 0xff_ffff) << 24) | (part & 0xff_ffff));
         Self(generator)
     }
 
@@ -54,7 +67,7 @@ mod tests {
 
     #[test]
     fn an_autoregressive_series_has_its_variance_and_its_memory() {
-        let series = Stream::new(3, 1).autoregressive(200_000, 8.0);
+        let series = Stream::new(3, purpose::FLOOR, 0, 0).autoregressive(200_000, 8.0);
         let mean = |values: &mut dyn Iterator<Item = f64>| values.sum::<f64>() / 200_000.0;
         let variance = mean(&mut series.iter().map(|v| v * v));
         assert!((variance - 1.0).abs() < 0.05, "{variance}");
@@ -65,7 +78,7 @@ mod tests {
 
     #[test]
     fn streams_are_repeatable_and_differ() {
-        let draw = |seed, purpose| Stream::new(seed, purpose).normal().to_bits();
+        let draw = |seed, thing| Stream::new(seed, purpose::SHIPS, thing, 0).normal().to_bits();
         assert_eq!(draw(1, 2), draw(1, 2));
         assert_ne!(draw(1, 2), draw(1, 3));
         assert_ne!(draw(1, 2), draw(2, 2));

@@ -1,8 +1,12 @@
 //! Records that cannot be fitted, or hardly: a named answer, never a panic.
 
 use super::simulator::{Truth, record};
+use proptest::prelude::*;
 use underwind::model::{NotResolved, Relation, RelationWarning, Verdict};
-use underwind::science::level_wind::{Loss, Options, ScatterModel, Segments, SiteRecord, fit_band, fit_site};
+use underwind::science::level_wind::{
+    Loss, Options, ScatterModel, Segments, SiteRecord, common_onset, correct_for_wind_error, drift_db_per_year,
+    fit_band, fit_site, residual_classes, residuals, search_lag,
+};
 
 const HOUR_MS: i64 = 3_600_000;
 
@@ -108,5 +112,64 @@ fn every_choice_of_options_gives_an_answer() {
                 }
             }
         }
+    }
+}
+
+fn odd_number() -> impl Strategy<Value = f64> {
+    prop_oneof![
+        6 => 0.1..30.0_f64,
+        3 => 40.0..90.0_f64,
+        1 => prop_oneof![
+            Just(f64::NAN),
+            Just(f64::INFINITY),
+            Just(f64::NEG_INFINITY),
+            Just(0.0),
+            Just(-3.0),
+            Just(1e308),
+            Just(-1e308),
+            Just(5e-324),
+        ],
+    ]
+}
+
+fn odd_time() -> impl Strategy<Value = i64> {
+    prop_oneof![8 => (0_i64..5000).prop_map(|hour| hour * HOUR_MS), 1 => any::<i64>()]
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 60, failure_persistence: None, ..ProptestConfig::default() })]
+
+    #[test]
+    fn no_input_panics(
+        rows in prop::collection::vec((odd_time(), odd_number(), odd_number(), odd_number(), 0_u32..3), 0..400),
+        cut in 0_usize..3,
+    ) {
+        let times: Vec<i64> = rows.iter().map(|row| row.0).collect();
+        let wind: Vec<f64> = rows.iter().map(|row| row.1).collect();
+        let level: Vec<f64> = rows.iter().map(|row| row.2).collect();
+        let other: Vec<f64> = rows.iter().map(|row| row.3).collect();
+        let deployment: Vec<u32> = rows.iter().map(|row| row.4).collect();
+        let segments = [Segments::Tested, Segments::FloorAndWindPart, Segments::Offset][cut];
+        let options = Options { replicates: 12, segments, wind_error_sd_m_s: Some(1.0), ..Options::default() };
+        // Columns of unequal length are cut to the shortest.
+        let site = SiteRecord {
+            times_ms: &times,
+            wind_speed_m_s: &wind[..wind.len() - cut.min(wind.len())],
+            deployment: Some(&deployment),
+            levels_db: vec![&level, &other],
+        };
+        let relations = fit_site(&site, &options);
+        prop_assert_eq!(relations.len(), 2);
+        for relation in &relations {
+            prop_assert!(!relation.verdict_text().is_empty());
+            prop_assert!(serde_json::to_string(relation).is_ok());
+        }
+        let residual = residuals(&wind, &level, Some(&deployment), &relations[0]);
+        let class: Vec<Option<u32>> = deployment.iter().copied().map(Some).collect();
+        residual_classes(&times, &residual, &class, 24.0, 1);
+        drift_db_per_year(&times, &residual, 24.0, 1);
+        search_lag(&times, &wind, &level, 2, 24.0);
+        correct_for_wind_error(&times, &wind, &level, Some(&deployment), &options);
+        common_onset(&relations);
     }
 }

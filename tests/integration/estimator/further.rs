@@ -6,8 +6,8 @@ use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, Normal};
 use underwind::model::{RelationWarning, Resolved, Verdict};
 use underwind::science::level_wind::{
-    KeepReplicates, Options, SiteRecord, common_onset, correct_for_wind_error, drift_db_per_year, fit_band, fit_site,
-    residual_classes, residuals, search_lag,
+    KeepReplicates, Options, ScreenOptions, SiteRecord, common_onset, correct_for_wind_error, drift_db_per_year,
+    fit_band, fit_site, residual_classes, residuals, screen_short_events, search_lag,
 };
 
 fn options() -> Options {
@@ -197,4 +197,42 @@ fn a_deployment_has_its_own_curve() {
     let residual = residuals(&simulated.wind_m_s, &simulated.level_db, Some(&simulated.deployment), &relation);
     let half_mean = |rows: std::ops::Range<usize>| residual[rows.clone()].iter().sum::<f64>() / rows.len() as f64;
     assert!(half_mean(0..4380).abs() < 0.3 && half_mean(4380..8760).abs() < 0.3);
+}
+
+#[test]
+fn short_coherent_events_are_marked_and_weather_is_kept() {
+    let bands = |scatter: Scatter| -> (Vec<i64>, Vec<Vec<f64>>) {
+        // The same seed gives the same wind and the same ships in every band.
+        let levels: Vec<Vec<f64>> = (0..6)
+            .map(|band| {
+                let truth = Truth { crossover_m_s: 3.0 + f64::from(band), scatter, ..Truth::default() };
+                record(truth, 4000, 81).level_db
+            })
+            .collect();
+        (record(Truth::default(), 4000, 81).times_ms, levels)
+    };
+    let run = |scatter: Scatter| {
+        let (times, levels) = bands(scatter);
+        let columns: Vec<&[f64]> = levels.iter().map(Vec::as_slice).collect();
+        (screen_short_events(&times, &columns, &ScreenOptions::default()), levels)
+    };
+    // Loud ships: rows that a ship raises by more than 8 dB in at least four of the six bands.
+    let (found, with_ships) = run(Scatter::Ships);
+    let (calm, without) = run(Scatter::Total { memory_h: 8.0 });
+    let raised = |row: usize| (0..6).filter(|&band| with_ships[band][row] - without[band][row] > 8.0).count();
+    let loud: Vec<usize> = (0..4000).filter(|&row| raised(row) >= 4).collect();
+    assert!(loud.len() > 50, "{}", loud.len());
+    let caught = loud.iter().filter(|&&row| found.marked[row]).count() as f64 / loud.len() as f64;
+    assert!(caught > 0.6, "{caught}");
+    // Scatter that is common to all bands is the hardest case for coherence; few hours of it are short enough.
+    let wrong = calm.marked.iter().filter(|marked| **marked).count() as f64 / 4000.0;
+    assert!(wrong < 0.06, "{wrong}");
+    // A storm of two days is not a ship.
+    let times: Vec<i64> = (0..500).map(|hour| hour * 3_600_000).collect();
+    let storm: Vec<f64> =
+        (0..500).map(|hour| if (200..248).contains(&hour) { 80.0 } else { 60.0 + f64::from(hour % 3) }).collect();
+    let screened = screen_short_events(&times, &[&storm, &storm, &storm], &ScreenOptions::default());
+    assert!(screened.marked.iter().all(|marked| !marked));
+    assert_eq!(screen_short_events(&times, &[&storm], &ScreenOptions::default()).events, 0);
+    assert_eq!(screen_short_events(&[], &[], &ScreenOptions::default()).events, 0);
 }

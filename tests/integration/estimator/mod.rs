@@ -3,6 +3,7 @@
 mod cases;
 mod edge_cases;
 mod further;
+mod independent;
 mod properties;
 mod simulator;
 mod study;

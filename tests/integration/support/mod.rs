@@ -8,6 +8,7 @@ pub(crate) fn project() -> &'static Path {
     Path::new(env!("CARGO_MANIFEST_DIR"))
 }
 
+#[expect(clippy::print_stdout, reason = "a skipped test says so")]
 /// A folder of material that is not part of the project; `None`, with a message, where it is absent.
 pub(crate) fn shared(folder: &str) -> Option<PathBuf> {
     let variable = if folder == "data" { "UNDERWIND_REAL_DATA" } else { "UNDERWIND_SHARED" };

@@ -1,0 +1,5 @@
+//! Gridded wind: formats, axes, time, packing; against numbers worked out by general-purpose libraries.
+
+mod formats;
+mod reference;
+mod support;
