@@ -1,7 +1,6 @@
 //! `[relation]`: how level is fitted against wind speed.
 
 use super::error::{Complaint, StudyError};
-use super::place::WindSpeedMS;
 use crate::science::level_wind::{KeepReplicates, Loss, Options, ScatterModel, Segments};
 use serde::{Deserialize, Serialize};
 use toml::Spanned;
@@ -19,7 +18,6 @@ pub(super) struct RawRelation {
     replicates: Option<Spanned<usize>>,
     seed: Option<u64>,
     keep_replicates: Option<bool>,
-    wind_error_sd_m_s: Option<WindSpeedMS>,
 }
 
 /// `[relation]` with its defaults.
@@ -51,7 +49,7 @@ impl RawRelation {
                 replicates,
                 seed: self.seed.unwrap_or(defaults.seed),
                 keep_replicates,
-                wind_error_sd_m_s: self.wind_error_sd_m_s.map(|speed| speed.0),
+                wind_error_sd_m_s: defaults.wind_error_sd_m_s,
             },
         })
     }

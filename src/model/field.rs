@@ -140,6 +140,8 @@ pub struct Slab {
 pub struct Block {
     /// Values in the source's own units; NaN is missing.
     pub values: Vec<f64>,
+    /// Whether each value is preliminary; empty where none is.
+    pub preliminary: Vec<bool>,
 }
 
 /// A gridded field whose node values can be had block by block.

@@ -133,7 +133,40 @@ impl Axis {
 
     /// The coordinate of a node, by its stored index.
     pub fn value_at(&self, stored: usize) -> Option<f64> {
-        self.stored.iter().position(|known| *known == stored).map(|k| self.values[k])
+        // Values are kept in the stored order or in its reverse, so the place follows from the ends.
+        let first = self.stored[0];
+        let place = if self.stored[self.stored.len() - 1] >= first {
+            stored.checked_sub(first)?
+        } else {
+            first.checked_sub(stored)?
+        };
+        self.values.get(place).copied()
+    }
+
+    /// Stored index and coordinate of every node, in increasing order of the coordinate.
+    pub fn nodes(&self) -> impl DoubleEndedIterator<Item = (usize, f64)> + '_ {
+        self.stored.iter().copied().zip(self.values.iter().copied())
+    }
+
+    /// The nodes whose coordinate is between two values, both included.
+    pub fn between(&self, low: f64, high: f64) -> impl Iterator<Item = (usize, f64)> + '_ {
+        let from = self.values.partition_point(|value| *value < low);
+        let to = self.values.partition_point(|value| *value <= high).max(from);
+        self.stored[from..to].iter().copied().zip(self.values[from..to].iter().copied())
+    }
+
+    /// The nodes of an axis of longitudes that are within so many degrees of a longitude, on whichever turn.
+    pub fn around_longitude(&self, longitude_deg: f64, degrees: f64) -> Vec<(usize, f64)> {
+        if degrees >= 180.0 {
+            return self.nodes().collect();
+        }
+        let (low, high) = self.limits();
+        let first = ((low - degrees - longitude_deg) / 360.0).ceil() as i64;
+        let last = ((high + degrees - longitude_deg) / 360.0).floor() as i64;
+        (first..=last)
+            .map(|turn| longitude_deg + 360.0 * turn as f64)
+            .flat_map(|centre| self.between(centre - degrees, centre + degrees))
+            .collect()
     }
 
     /// Where a coordinate falls; `None` outside the axis.
@@ -265,6 +298,31 @@ mod tests {
     fn noise_of_float32_does_not_open_the_circle() {
         let stored: Vec<f64> = (0..1440).map(|k| f64::from((k as f32) * 0.25_f32 + 1e-5)).collect();
         assert!(Axis::longitude(&stored).unwrap().is_periodic());
+    }
+
+    #[test]
+    fn nodes_around_a_longitude_are_found_on_every_turn() {
+        let axis = Axis::longitude(&(0..36).map(|k| f64::from(k) * 10.0).collect::<Vec<_>>()).unwrap();
+        let columns = |longitude, degrees| {
+            let mut columns: Vec<usize> =
+                axis.around_longitude(longitude, degrees).into_iter().map(|(column, _)| column).collect();
+            columns.sort_unstable();
+            columns
+        };
+        assert_eq!(columns(-2.0, 12.5), [0, 1, 35]);
+        assert_eq!(columns(358.0, 12.5), [0, 1, 35]);
+        assert_eq!(columns(95.0, 5.0), [9, 10]);
+        assert_eq!(columns(95.0, 4.9), [0_usize; 0]);
+        assert_eq!(columns(0.0, 180.0).len(), 36);
+    }
+
+    #[test]
+    fn a_value_is_found_by_its_stored_index_whichever_way_the_axis_runs() {
+        let falling = Axis::longitude(&[360.0, 240.0, 120.0, 0.0]).unwrap();
+        assert_eq!((falling.len(), falling.value_at(0)), (3, None), "the column stored twice is dropped");
+        assert_eq!((falling.value_at(1), falling.value_at(3), falling.value_at(4)), (Some(240.0), Some(0.0), None));
+        let rising = Axis::linear(&[3.0, 4.0]).unwrap();
+        assert_eq!((rising.value_at(0), rising.value_at(1), rising.value_at(2)), (Some(3.0), Some(4.0), None));
     }
 
     #[test]

@@ -1,6 +1,6 @@
 //! `fit`: level against wind speed, per source, site, sensor and band.
 
-use super::matching::{Matched, reason_of_pair};
+use super::matching::{Matched, deployment_labels, used_levels_db};
 use super::progress::Progress;
 use crate::Error;
 use crate::config::{Study, TableFormat, WindowSpeed};
@@ -42,20 +42,8 @@ fn fit_record(study: &Study, record: &SensorRecord, conditions: &Conditions) -> 
     let times_ms: Vec<i64> = record.windows.iter().map(|window| window.centre().0).collect();
     let wind: Vec<f64> =
         conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), study.matching.wind_speed)).collect();
-    let levels: Vec<Vec<f64>> = record
-        .bands
-        .iter()
-        .map(|band| {
-            (0..record.windows.len())
-                .map(|k| match reason_of_pair(record, band, conditions, k) {
-                    None => band.level_db[k],
-                    Some(_) => f64::NAN,
-                })
-                .collect()
-        })
-        .collect();
-    let deployment: Option<Vec<u32>> = (record.deployments.len() > 1)
-        .then(|| record.deployment.iter().map(|deployment| deployment.unwrap_or(0)).collect());
+    let levels = used_levels_db(record, conditions);
+    let deployment = deployment_labels(record);
     let site = SiteRecord {
         times_ms: &times_ms,
         wind_speed_m_s: &wind,

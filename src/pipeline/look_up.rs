@@ -8,7 +8,7 @@ use crate::config::{level_options_from, wind_options_from};
 use crate::io::levels::LevelError;
 use crate::io::netcdf::{WindSource, open_wind};
 use crate::io::sites::{SiteOptions, find_site};
-use crate::model::{FieldSource, FlagSet, Missing, Point, Site, SourceId, SpatialRule, Track};
+use crate::model::{FieldSource, FlagSet, Missing, Point, Site, SourceId, SpatialRule, Track, WindSeries};
 use crate::science::matchup::wind_at;
 use crate::units::{ComingFrom, Compass, Instant, Window};
 use serde::Serialize;
@@ -200,11 +200,12 @@ pub fn look_up_wind(question: &LookUp) -> Result<Answer, Error> {
     let window = Window { start: time, end: time };
     let series = sample_wind(&source, &[site], Some(window), &question.spatial, &Silent)?.remove(0);
     let sampled = wind_at(&series, time);
+    let around = steps_around(&series, time, sampled.value().is_some());
     let inputs = serde_json::json!({
         "files": source.files().iter().map(|(path, format)| serde_json::json!({ "file": path, "format": format })).collect::<Vec<_>>(),
         "variables": source.variables(),
         "nodes": series.nodes,
-        "steps": series.steps.iter().map(|step| step.iso()).collect::<Vec<_>>(),
+        "steps": around.iter().map(|step| step.iso()).collect::<Vec<_>>(),
         "height_m": series.height_m,
         "notes": source.warnings(),
     });
@@ -223,11 +224,23 @@ pub fn look_up_wind(question: &LookUp) -> Result<Answer, Error> {
         },
         (None, why) => {
             let why = why.unwrap_or(Missing::NoWind);
-            Answer::missing(quantity, unit, why, &detail(&source, why, &series.steps))
+            Answer::missing(quantity, unit, why, &detail(&source, why, &around))
         }
     };
     answer.inputs = inputs;
     Ok(answer)
+}
+
+/// The steps on either side of an instant, or the step at it: those with a value where there is an answer (steps without one
+/// were bridged), else the nearest.
+fn steps_around(series: &WindSeries, time: Instant, with_value: bool) -> Vec<Instant> {
+    let known = series.steps.iter().zip(&series.missing).filter(|(_, why)| why.is_none() || !with_value);
+    let steps: Vec<Instant> = known.map(|(step, _)| *step).collect();
+    let after = steps.partition_point(|step| *step < time);
+    if steps.get(after) == Some(&time) {
+        return vec![time];
+    }
+    steps[after.saturating_sub(1)..(after + 1).min(steps.len())].to_vec()
 }
 
 /// The limits that a missing value lies outside of.
@@ -237,6 +250,13 @@ fn detail(source: &WindSource, why: Missing, around: &[Instant]) -> String {
         Missing::OutsideGrid => {
             let (south, north) = meta.grid.latitude.limits();
             let (west, east) = meta.grid.longitude.limits();
+            if meta.grid.latitude.len() == 1 || meta.grid.longitude.len() == 1 {
+                return format!(
+                    "the grid has {} x {} nodes from {south} to {north} degrees north and from {west} to {east} degrees east, which does not surround a site; the nearest node can be taken (`match.spatial = \"nearest\"`)",
+                    meta.grid.latitude.len(),
+                    meta.grid.longitude.len()
+                );
+            }
             format!("the grid runs from {south} to {north} degrees north and from {west} to {east} degrees east")
         }
         Missing::OutsideTime => match (meta.steps.first(), meta.steps.last()) {

@@ -256,6 +256,22 @@ pub(super) fn reason_of_pair(
     pair_reason(band.reason[k], band.level_db[k], record.deployment[k].is_some(), conditions.missing[k])
 }
 
+/// Levels of each band, one entry a window, dB; NaN where the pair is not used.
+pub(super) fn used_levels_db(record: &SensorRecord, conditions: &Conditions) -> Vec<Vec<f64>> {
+    let level = |band: &BandLevels, k: usize| match reason_of_pair(record, band, conditions, k) {
+        None => band.level_db[k],
+        Some(_) => f64::NAN,
+    };
+    record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()
+}
+
+/// Deployment of each window as the fit wants it; `None` where there is but one.
+pub(super) fn deployment_labels(record: &SensorRecord) -> Option<Vec<u32>> {
+    // Windows outside all deployments have no used level; any label serves.
+    let label = |deployment: &Option<u32>| deployment.unwrap_or(0);
+    (record.deployments.len() > 1).then(|| record.deployment.iter().map(label).collect())
+}
+
 fn nothing_in_common(inputs: &Inputs, matched: &Matched, whole: Option<Window>) -> Error {
     let levels = whole.map_or_else(
         || "the level tables give no level at a site of the study".to_owned(),

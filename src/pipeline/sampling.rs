@@ -63,6 +63,11 @@ pub fn sample_wind(
     progress: &dyn Progress,
 ) -> Result<Vec<WindSeries>, NetcdfError> {
     let meta = source.meta();
+    // A missing step at the window's edge may be bridged: so the steps beyond it are needed too.
+    let window = window.map(|window| Window {
+        start: window.start.plus_ms(-source.max_gap_ms()),
+        end: window.end.plus_ms(source.max_gap_ms()),
+    });
     let steps = steps_of(&meta.steps, window);
     let stencils: Vec<Stencils> =
         sites.iter().map(|site| Stencils::of(&meta.grid, site, rule, &meta.steps[steps.clone()])).collect();
@@ -74,7 +79,7 @@ pub fn sample_wind(
         .collect::<BTreeSet<_>>()
         .into_iter()
         .collect();
-    let values = decode_all(source, &nodes, &steps, window, progress)?;
+    let Decoded { values, preliminary } = decode_all(source, &nodes, &steps, window, progress)?;
     let all = sites
         .par_iter()
         .zip(&stencils)
@@ -91,6 +96,7 @@ pub fn sample_wind(
                     first: of_step(0),
                     second: of_step(1),
                     second_is_direction: source.kind() == WindKind::SpeedAndDirection,
+                    preliminary: preliminary.get(slot..slot + nodes.len()).unwrap_or_default(),
                 };
                 let found = stencils
                     .at(k)
@@ -145,17 +151,24 @@ fn empty_series(source: &WindSource, site: &Site, steps: Vec<crate::units::Insta
     }
 }
 
-/// Values of the nodes: component by component, step by step, node by node.
+/// Values of the nodes: component by component, step by step, node by node; and which of them (in any component) are
+/// preliminary, empty where none is.
+struct Decoded {
+    values: Vec<Vec<f64>>,
+    preliminary: Vec<bool>,
+}
+
 fn decode_all(
     source: &WindSource,
     nodes: &[NodeId],
     steps: &std::ops::Range<usize>,
     window: Option<Window>,
     progress: &dyn Progress,
-) -> Result<Vec<Vec<f64>>, NetcdfError> {
-    let mut values = vec![vec![f64::NAN; steps.len() * nodes.len()]; source.components()];
+) -> Result<Decoded, NetcdfError> {
+    let size = steps.len() * nodes.len();
+    let mut decoded = Decoded { values: vec![vec![f64::NAN; size]; source.components()], preliminary: Vec::new() };
     if nodes.is_empty() {
-        return Ok(values);
+        return Ok(decoded);
     }
     let slabs = source.plan(&NodeRequest { nodes: nodes.to_vec(), window });
     progress.start(slabs.len() as u64, "reading wind");
@@ -169,11 +182,11 @@ fn decode_all(
             })
             .collect();
         for (slab, block) in batch.iter().zip(blocks) {
-            place(source, slab, &block?, nodes.len(), steps, &mut values)?;
+            place(source, slab, &block?, nodes.len(), steps, &mut decoded)?;
         }
     }
     progress.finish();
-    Ok(values)
+    Ok(decoded)
 }
 
 /// Puts a block's values where they belong; a step that is there already must say the same.
@@ -183,19 +196,25 @@ fn place(
     block: &Block,
     nodes: usize,
     steps: &std::ops::Range<usize>,
-    values: &mut [Vec<f64>],
+    decoded: &mut Decoded,
 ) -> Result<(), NetcdfError> {
     let (component, merged) = source.slab_steps(slab);
-    let tolerance = source.tolerance();
+    if !block.preliminary.is_empty() {
+        decoded.preliminary.resize(decoded.values[component].len(), false);
+    }
     for (k, step) in merged.iter().enumerate() {
         let Some(step) = step.filter(|step| steps.contains(step)) else { continue };
-        let from = &block.values[k * nodes..(k + 1) * nodes];
         let slot = (step - steps.start) * nodes;
-        for (known, new) in values[component][slot..slot + nodes].iter_mut().zip(from) {
+        for node in 0..nodes {
+            let new = block.values[k * nodes + node];
+            let known = &mut decoded.values[component][slot + node];
             if known.is_nan() {
-                *known = *new;
-            } else if (*known - new).abs() > tolerance {
-                return Err(source.conflict(slab, source.meta().steps[step], *known, *new));
+                *known = new;
+                if block.preliminary.get(k * nodes + node) == Some(&true) && !new.is_nan() {
+                    decoded.preliminary[slot + node] = true;
+                }
+            } else if source.contradict(component, *known, new) {
+                return Err(source.conflict(slab, source.meta().steps[step], *known, new));
             }
         }
     }

@@ -1,10 +1,12 @@
 //! All integration tests: one program, so that the heavy libraries are linked once.
 #![expect(clippy::unwrap_used, reason = "a test may stop at the first surprise")]
 
+mod cli;
 mod demo;
 mod estimator;
 mod grids;
 mod layering;
+mod real_data;
 mod simulate;
 mod study_file;
 mod support;

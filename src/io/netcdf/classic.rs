@@ -121,9 +121,8 @@ impl<'a> Cursor<'a> {
                 VariableType::Number(number) => {
                     let size = number.size();
                     let bytes = length.checked_mul(size as u64).ok_or(Trouble::Short)?;
-                    AttributeValue::Numbers(
-                        self.padded(bytes)?.chunks_exact(size).map(|value| number.decode(value, true)).collect(),
-                    )
+                    let values = self.padded(bytes)?.chunks_exact(size).map(|value| number.decode(value, true));
+                    AttributeValue::Numbers(values.collect(), number)
                 }
             };
             attributes.push((name, value));
@@ -197,7 +196,15 @@ fn parse(path: &Path, version: u8, bytes: &[u8], file_bytes: u64) -> Result<Head
     let records = if stated_records == streaming {
         // Written as a stream: the number of records follows from the file's size.
         let begin = variables.iter().filter(|raw| raw.is_record).map(|raw| raw.begin).min().unwrap_or(file_bytes);
-        file_bytes.saturating_sub(begin).checked_div(record_bytes).unwrap_or(0)
+        let of_records = file_bytes.saturating_sub(begin);
+        // The format pads a file to four bytes at most.
+        let rest = of_records.checked_rem(record_bytes).unwrap_or(0);
+        if rest > 3 {
+            return Err(Trouble::Wrong(format!(
+                "its last record has {rest} of {record_bytes} bytes (the number of records is not stated)"
+            )));
+        }
+        of_records.checked_div(record_bytes).unwrap_or(0)
     } else {
         stated_records
     };
@@ -210,7 +217,12 @@ fn parse(path: &Path, version: u8, bytes: &[u8], file_bytes: u64) -> Result<Head
         let name = &raw.variable.name;
         let last = if raw.is_record {
             let before = records.saturating_sub(1).checked_mul(record_bytes);
-            before.filter(|_| records > 0).map_or(Some(raw.begin), |before| before.checked_add(raw.begin + raw.bytes))
+            // Without records there are no bytes, and the place may be the end of the file.
+            if records == 0 {
+                Some(0)
+            } else {
+                before.and_then(|before| before.checked_add(raw.begin.checked_add(raw.bytes)?))
+            }
         } else {
             raw.begin.checked_add(raw.bytes)
         };
@@ -235,7 +247,7 @@ fn parse(path: &Path, version: u8, bytes: &[u8], file_bytes: u64) -> Result<Head
         2 => "NetCDF 64-bit offset",
         _ => "NetCDF CDF-5",
     };
-    Ok(Header { path: path.to_owned(), format, dimensions, variables: finished })
+    Ok(Header { path: path.to_owned(), format, dimensions, variables: finished, groups: Vec::new() })
 }
 
 fn raw_variable(

@@ -55,9 +55,9 @@ fn read_header_trusting(path: &Path) -> Result<Header, NetcdfError> {
         let storage = storage(path, &raw, &name, kind, &shape)?;
         variables.push(Variable { name, dimensions: of_variable, kind, attributes, storage });
     }
+    let groups: Vec<String> =
+        file.groups().map(|groups| groups.map(|group| group.name()).collect()).unwrap_or_default();
     if variables.is_empty() {
-        let groups: Vec<String> =
-            file.groups().map(|groups| groups.map(|group| group.name()).collect()).unwrap_or_default();
         let problem = if groups.is_empty() {
             "it has no variables".to_owned()
         } else {
@@ -65,7 +65,7 @@ fn read_header_trusting(path: &Path) -> Result<Header, NetcdfError> {
         };
         return Err(library("nothing to read", problem));
     }
-    Ok(Header { path: path.to_owned(), format: "NetCDF-4", dimensions, variables })
+    Ok(Header { path: path.to_owned(), format: "NetCDF-4", dimensions, variables, groups })
 }
 
 /// The library's message without its trace, which names folders of the build.
@@ -94,33 +94,34 @@ fn kind(found: &NcVariableType) -> VariableType {
 fn attribute_value(value: Nc) -> AttributeValue {
     use AttributeValue::{Numbers, Text};
     macro_rules! all {
-        ($values:expr) => {
-            Numbers($values.into_iter().map(|value| value as f64).collect())
+        ($values:expr, $kind:ident) => {
+            Numbers($values.into_iter().map(|value| value as f64).collect(), NumberType::$kind)
         };
     }
+    let one = |value: f64, kind: NumberType| Numbers(vec![value], kind);
     match value {
         Nc::Str(text) => Text(text),
         Nc::Strs(texts) => Text(texts.join(" ")),
-        Nc::Uchar(value) => Numbers(vec![f64::from(value)]),
-        Nc::Schar(value) => Numbers(vec![f64::from(value)]),
-        Nc::Ushort(value) => Numbers(vec![f64::from(value)]),
-        Nc::Short(value) => Numbers(vec![f64::from(value)]),
-        Nc::Uint(value) => Numbers(vec![f64::from(value)]),
-        Nc::Int(value) => Numbers(vec![f64::from(value)]),
-        Nc::Ulonglong(value) => Numbers(vec![value as f64]),
-        Nc::Longlong(value) => Numbers(vec![value as f64]),
-        Nc::Float(value) => Numbers(vec![f64::from(value)]),
-        Nc::Double(value) => Numbers(vec![value]),
-        Nc::Uchars(values) => all!(values),
-        Nc::Schars(values) => all!(values),
-        Nc::Ushorts(values) => all!(values),
-        Nc::Shorts(values) => all!(values),
-        Nc::Uints(values) => all!(values),
-        Nc::Ints(values) => all!(values),
-        Nc::Ulonglongs(values) => all!(values),
-        Nc::Longlongs(values) => all!(values),
-        Nc::Floats(values) => all!(values),
-        Nc::Doubles(values) => Numbers(values),
+        Nc::Uchar(value) => one(f64::from(value), NumberType::U8),
+        Nc::Schar(value) => one(f64::from(value), NumberType::I8),
+        Nc::Ushort(value) => one(f64::from(value), NumberType::U16),
+        Nc::Short(value) => one(f64::from(value), NumberType::I16),
+        Nc::Uint(value) => one(f64::from(value), NumberType::U32),
+        Nc::Int(value) => one(f64::from(value), NumberType::I32),
+        Nc::Ulonglong(value) => one(value as f64, NumberType::U64),
+        Nc::Longlong(value) => one(value as f64, NumberType::I64),
+        Nc::Float(value) => one(f64::from(value), NumberType::F32),
+        Nc::Double(value) => one(value, NumberType::F64),
+        Nc::Uchars(values) => all!(values, U8),
+        Nc::Schars(values) => all!(values, I8),
+        Nc::Ushorts(values) => all!(values, U16),
+        Nc::Shorts(values) => all!(values, I16),
+        Nc::Uints(values) => all!(values, U32),
+        Nc::Ints(values) => all!(values, I32),
+        Nc::Ulonglongs(values) => all!(values, U64),
+        Nc::Longlongs(values) => all!(values, I64),
+        Nc::Floats(values) => all!(values, F32),
+        Nc::Doubles(values) => Numbers(values, NumberType::F64),
     }
 }
 
@@ -150,11 +151,8 @@ fn storage(
             // The library undoes these by itself.
             h5::filters::Filter::ScaleOffset(_) | h5::filters::Filter::NBit => own = false,
             other => {
-                return Err(NetcdfError::Filter {
-                    path: path.to_owned(),
-                    variable: name.to_owned(),
-                    filter: filter_name(&other),
-                });
+                // Refused when it is read: a file may hold other variables than the wind.
+                return Ok(Storage::Locked(filter_name(&other)));
             }
         }
     }
@@ -185,7 +183,7 @@ fn storage(
                     action: format!("the index of variable `{name}` cannot be read"),
                     problem: first_line(&error),
                 })?;
-            Ok(Storage::Chunked(Chunks { shape: chunk, filters, big_endian, blocks }))
+            Ok(Storage::Chunked(Chunks { shape: chunk, extent: stored_shape, filters, big_endian, blocks }))
         }
         _ => Ok(Storage::Library),
     }

@@ -18,6 +18,11 @@ pub(super) enum NumberType {
 }
 
 impl NumberType {
+    /// Whether it is a whole number.
+    pub(super) fn is_integer(self) -> bool {
+        !matches!(self, Self::F32 | Self::F64)
+    }
+
     /// Bytes a value.
     pub(super) fn size(self) -> usize {
         match self {
@@ -81,7 +86,8 @@ pub(super) enum VariableType {
 #[derive(Debug, Clone, PartialEq)]
 pub(super) enum AttributeValue {
     Text(String),
-    Numbers(Vec<f64>),
+    /// Numbers, with the type that they are stored in.
+    Numbers(Vec<f64>, NumberType),
 }
 
 /// A dimension.
@@ -102,6 +108,8 @@ pub(super) enum Storage {
     Chunked(Chunks),
     /// Read through the library.
     Library,
+    /// Packed with a filter that cannot be undone: its name.
+    Locked(String),
 }
 
 /// The chunks of a variable.
@@ -109,6 +117,9 @@ pub(super) enum Storage {
 pub(super) struct Chunks {
     /// Length of a chunk along each dimension.
     pub(super) shape: Vec<u64>,
+    /// Length of the stored data along each dimension: along an unlimited one it may be shorter than the dimension, and what
+    /// a chunk holds beyond it means nothing.
+    pub(super) extent: Vec<u64>,
     /// Filters in the order of writing.
     pub(super) filters: Vec<Filter>,
     pub(super) big_endian: bool,
@@ -152,6 +163,8 @@ pub(super) struct Header {
     pub(super) format: &'static str,
     pub(super) dimensions: Vec<Dimension>,
     pub(super) variables: Vec<Variable>,
+    /// Names of groups, whose variables are not read.
+    pub(super) groups: Vec<String>,
 }
 
 impl Variable {
@@ -166,7 +179,7 @@ impl Variable {
             AttributeValue::Text(text) => {
                 Some(text.trim_matches(['\0', ' ', '\n', '\t'])).filter(|text| !text.is_empty())
             }
-            AttributeValue::Numbers(_) => None,
+            AttributeValue::Numbers(..) => None,
         }
     }
 

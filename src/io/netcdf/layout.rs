@@ -63,6 +63,10 @@ fn axis_of(header: &Header, dimension: &str, options: &WindOptions) -> Axes {
             "height" => return Axes::Height,
             "realization" => return Axes::Member,
             "forecast_period" => return Axes::Lead,
+            // Kept apart from real latitudes, whose units some files give them.
+            "grid_latitude" | "grid_longitude" | "projection_x_coordinate" | "projection_y_coordinate" => {
+                return Axes::Other;
+            }
             _ => {}
         }
         if looks_like_time(variable) {
@@ -100,6 +104,10 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
         |problem: String| NetcdfError::Variable { path: header.path.clone(), variable: variable.name.clone(), problem };
     let names = header.dimension_names(variable);
     let shape = header.shape(variable);
+    let mapping = grid_mapping(header, variable);
+    if let Some(layout @ (Layout::RotatedPole | Layout::Projected)) = mapping {
+        return Err(refuse(not_sampled(layout)));
+    }
     let mut places = [None; 3];
     let mut fixed = vec![vec![0_u64; names.len()]];
     let mut notes = Vec::new();
@@ -124,7 +132,7 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
         }
         let values = || -> Result<Vec<f64>, NetcdfError> {
             match header.variable(name) {
-                Some(coordinate) if coordinate.number_type().is_some() => reader.all(coordinate),
+                Some(coordinate) if coordinate.number_type().is_some() => reader.coordinate(coordinate),
                 _ => Ok((0..shape[place]).map(|index| index as f64).collect()),
             }
         };
@@ -143,6 +151,15 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
         match (axis, shape[place]) {
             (Axes::Height, 1) => {
                 height_m = values()?.first().copied().filter(|_| header.variable(name).is_some()).or(height_m);
+            }
+            (Axes::Lead, 1) => {
+                let lead = values()?.first().copied().filter(|_| header.variable(name).is_some()).unwrap_or(0.0);
+                // Where the time is stated to be the valid time, the lead is settled.
+                if lead != 0.0 && options.time.is_none() && !has_valid_time(header, &names) {
+                    return Err(refuse(format!(
+                        "it is a forecast of lead time {lead} (`{name}`), so that its times may be those of the forecast's start; set `wind.time` to the variable of valid times"
+                    )));
+                }
             }
             (_, 1) => {}
             (Axes::Height, _) => {
@@ -187,7 +204,7 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
                 )));
             }
             (_, count) => {
-                return Err(refuse(layout_problem(header, variable, name, count)));
+                return Err(refuse(layout_problem(header, name, count)));
             }
         }
     }
@@ -203,7 +220,7 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
 }
 
 /// Why a field with a further dimension cannot be sampled.
-fn layout_problem(header: &Header, variable: &Variable, dimension: &str, count: u64) -> String {
+fn layout_problem(header: &Header, dimension: &str, count: u64) -> String {
     let of_dimension: Vec<&Variable> = header
         .variables
         .iter()
@@ -216,12 +233,11 @@ fn layout_problem(header: &Header, variable: &Variable, dimension: &str, count: 
         })
         .collect();
     let ranks: Vec<usize> = of_dimension.iter().map(|other| other.dimensions.len()).collect();
-    let mapping = variable.text("grid_mapping").and_then(|name| header.variable(name));
-    let mapping = mapping.and_then(|mapping| mapping.text("grid_mapping_name"));
-    let layout = match mapping {
-        Some(name) if name.contains("rotated") => Some(Layout::RotatedPole),
-        Some(name) if name != "latitude_longitude" => Some(Layout::Projected),
-        _ if ranks.contains(&2) => Some(Layout::Curvilinear),
+    let standard = header.variable(dimension).and_then(|variable| variable.text("standard_name")).unwrap_or_default();
+    let layout = match standard {
+        "grid_latitude" | "grid_longitude" => Some(Layout::RotatedPole),
+        "projection_x_coordinate" | "projection_y_coordinate" => Some(Layout::Projected),
+        _ if ranks.iter().any(|rank| *rank >= 2) => Some(Layout::Curvilinear),
         _ if ranks.contains(&1)
             && of_dimension.iter().any(|other| header.dimension_names(other).contains(&dimension)) =>
         {
@@ -231,13 +247,35 @@ fn layout_problem(header: &Header, variable: &Variable, dimension: &str, count: 
         _ => None,
     };
     match layout {
-        Some(layout) => {
-            format!("it lies on a {}, which is not sampled yet; expected latitude and longitude as axes", layout.name())
-        }
+        Some(layout) => not_sampled(layout),
         None => format!(
             "its dimension `{dimension}` has {count} values and is neither time, latitude nor longitude (set `wind.time`, `wind.latitude` or `wind.longitude`, or select one of them first)"
         ),
     }
+}
+
+fn not_sampled(layout: Layout) -> String {
+    let article = if layout == Layout::Nodes { "" } else { "a " };
+    format!(
+        "it lies on {article}{}, which is not sampled; expected latitude and longitude as axes (regrid it first)",
+        layout.name()
+    )
+}
+
+/// The layout that a variable's grid mapping states, where it is not that of plain latitudes and longitudes.
+fn grid_mapping(header: &Header, variable: &Variable) -> Option<Layout> {
+    // The attribute may hold "name: coordinates" pairs (CF section 5.6).
+    let name = variable.text("grid_mapping")?.split([':', ' ']).next()?;
+    match header.variable(name)?.text("grid_mapping_name")? {
+        "latitude_longitude" => None,
+        "rotated_latitude_longitude" => Some(Layout::RotatedPole),
+        _ => Some(Layout::Projected),
+    }
+}
+
+/// Whether one of a field's dimensions has a coordinate of valid times beside it.
+fn has_valid_time(header: &Header, dimensions: &[&str]) -> bool {
+    dimensions.contains(&"valid_time") || header.variable("valid_time").is_some()
 }
 
 /// A scalar coordinate of a variable.
@@ -247,7 +285,7 @@ fn scalar(reader: &Reader, variable: &Variable, standard_name: &str) -> Option<f
         let coordinate = reader.header.variable(name)?;
         let count: u64 = reader.header.shape(coordinate).iter().product();
         (coordinate.text("standard_name") == Some(standard_name) && count == 1)
-            .then(|| reader.all(coordinate).ok()?.first().copied())?
+            .then(|| reader.coordinate(coordinate).ok()?.first().copied())?
     })
 }
 
@@ -275,17 +313,29 @@ fn grid(
                 found.map_or_else(|| standard.to_owned(), |found| found.name.clone())
             }
         };
-        let coordinate =
-            header.variable(&name).filter(|coordinate| coordinate.dimensions.len() <= 1).ok_or_else(|| {
-                NetcdfError::Variable {
-                    path: header.path.clone(),
-                    variable: variable.name.clone(),
-                    problem: format!(
-                        "there is no one-dimensional {standard} variable `{name}` for it (set `wind.{standard}`)"
-                    ),
-                }
-            })?;
-        Ok((name, reader.all(coordinate)?))
+        let refuse = |problem: String| NetcdfError::Variable {
+            path: header.path.clone(),
+            variable: variable.name.clone(),
+            problem,
+        };
+        let coordinate = header.variable(&name).ok_or_else(|| {
+            refuse(format!("there is no {standard} variable `{name}` for it (set `wind.{standard}`)"))
+        })?;
+        if coordinate.dimensions.len() > 1 {
+            return Err(refuse(not_sampled(Layout::Curvilinear)));
+        }
+        if coordinate.text("units").is_some_and(|units| units.to_lowercase().starts_with("rad")) {
+            return Err(refuse(format!("its {standard} `{name}` is in radians; expected degrees")));
+        }
+        let values = reader.coordinate(coordinate)?;
+        let wanted = place.map_or(1, |place| header.shape(variable)[place]);
+        if values.len() as u64 != wanted {
+            return Err(refuse(format!(
+                "it has {wanted} nodes along {standard}, but `{name}` has {} values (set `wind.{standard}`)",
+                values.len()
+            )));
+        }
+        Ok((name, values))
     };
     let (latitude_name, latitudes) = values(row, &options.latitude, "latitude", &["lat", "latitude"])?;
     let (longitude_name, longitudes) = values(column, &options.longitude, "longitude", &["lon", "longitude"])?;

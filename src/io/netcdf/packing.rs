@@ -46,7 +46,7 @@ impl Packing {
         for name in ["_FillValue", "missing_value"] {
             match variable.attribute(name) {
                 None => {}
-                Some(AttributeValue::Numbers(values)) => {
+                Some(AttributeValue::Numbers(values, _)) => {
                     missing.extend(values.iter().map(|v| turned(cast(*v, number))))
                 }
                 Some(AttributeValue::Text(text)) => {
@@ -67,28 +67,10 @@ impl Packing {
             missing.extend(number.default_fill().map(turned));
         }
         missing.retain(|value| !value.is_nan());
-        let (mut low, mut high) = (f64::NEG_INFINITY, f64::INFINITY);
-        if let Some(range) = numbers(variable, "valid_range") {
-            if let [from, to] = range[..] {
-                (low, high) = (turned(from), turned(to));
-            } else {
-                notes.push(format!(
-                    "variable `{}`: `valid_range` has {} values, not two: not used",
-                    variable.name,
-                    range.len()
-                ));
-            }
-        }
-        if let Some([from]) = numbers(variable, "valid_min") {
-            low = turned(*from);
-        }
-        if let Some([to]) = numbers(variable, "valid_max") {
-            high = turned(*to);
-        }
         let mut factor = |name: &str, plain: f64| -> Result<f64, NetcdfError> {
             match variable.attribute(name) {
                 None => Ok(plain),
-                Some(AttributeValue::Numbers(values)) => match values[..] {
+                Some(AttributeValue::Numbers(values, _)) => match values[..] {
                     [value] if value.is_finite() => Ok(value),
                     _ => Err(refuse(format!("its attribute `{name}` is {values:?}; expected one finite number"))),
                 },
@@ -103,8 +85,65 @@ impl Packing {
         };
         let scale = factor("scale_factor", 1.0)?;
         let offset = factor("add_offset", 0.0)?;
-        // Ranges are stated in packed units (NUG); a range in other units would mask everything: see the check of the reader.
-        Ok(Self { missing, low, high, scale, offset, unsigned_turn, notes })
+        let mut packing =
+            Self { missing, low: f64::NEG_INFINITY, high: f64::INFINITY, scale, offset, unsigned_turn, notes };
+        packing.take_ranges(variable, number);
+        Ok(packing)
+    }
+
+    /// Limits outside which raw numbers are missing. They are stated in packed units, unless their type is that of the
+    /// unpacked values (NUG, attribute conventions: "if valid_range is the same type as scale_factor and this is wider than
+    /// the external data").
+    fn take_ranges(&mut self, variable: &Variable, number: NumberType) {
+        let is_packed = number.is_integer() && (self.resolution() > 0.0 || self.offset != 0.0);
+        for name in ["valid_range", "valid_min", "valid_max"] {
+            let Some((values, kind)) = numbers(variable, name) else { continue };
+            let (from, to) = match (name, values) {
+                ("valid_range", [from, to]) => (Some(*from), Some(*to)),
+                ("valid_min", [from]) => (Some(*from), None),
+                ("valid_max", [to]) => (None, Some(*to)),
+                _ => {
+                    self.notes.push(format!(
+                        "variable `{}`: `{name}` has {} values, which is not what it should have: not used",
+                        variable.name,
+                        values.len()
+                    ));
+                    continue;
+                }
+            };
+            let unpacked = is_packed && !kind.is_integer();
+            if unpacked {
+                self.notes.push(format!(
+                    "variable `{}`: `{name}` is taken in the units of the unpacked values, as its type says",
+                    variable.name
+                ));
+            }
+            let raw = |value: f64| {
+                if unpacked {
+                    (value - self.offset) / self.scale
+                } else {
+                    match self.unsigned_turn {
+                        Some(turn) if value < 0.0 => value + turn,
+                        _ => cast(value, number),
+                    }
+                }
+            };
+            // A negative scale turns the limits round; a hair of room for the rounding of the division.
+            let (from, to) = (from.map(raw), to.map(raw));
+            let (from, to) = if unpacked && self.scale < 0.0 { (to, from) } else { (from, to) };
+            let room = if unpacked { 1e-6 } else { 0.0 };
+            self.low = from.map_or(self.low, |from| self.low.max(from - room));
+            self.high = to.map_or(self.high, |to| self.high.min(to + room));
+        }
+    }
+
+    /// Least and greatest value that the valid range leaves, in the variable's units; `None` without a range.
+    pub(super) fn valid_span(&self) -> Option<(f64, f64)> {
+        if self.low.is_infinite() && self.high.is_infinite() {
+            return None;
+        }
+        let (a, b) = (self.low * self.scale + self.offset, self.high * self.scale + self.offset);
+        Some((a.min(b), a.max(b)))
     }
 
     /// The value of a raw number; NaN when it is missing.
@@ -120,9 +159,9 @@ impl Packing {
     }
 }
 
-fn numbers<'a>(variable: &'a Variable, name: &str) -> Option<&'a [f64]> {
+fn numbers<'a>(variable: &'a Variable, name: &str) -> Option<(&'a [f64], NumberType)> {
     match variable.attribute(name)? {
-        AttributeValue::Numbers(values) => Some(values),
+        AttributeValue::Numbers(values, kind) => Some((values, *kind)),
         AttributeValue::Text(_) => None,
     }
 }

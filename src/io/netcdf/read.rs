@@ -2,6 +2,7 @@
 
 use super::error::NetcdfError;
 use super::header::{ChunkPlace, Chunks, Filter, Header, NumberType, Storage, Variable};
+use super::packing::Packing;
 use crate::io::contain::contain;
 use libdeflater::Decompressor;
 use std::cell::RefCell;
@@ -13,6 +14,10 @@ use std::sync::OnceLock;
 const NEAR_BYTES: u64 = 64 << 10;
 /// Longest run that is read in one go.
 const LONGEST_RUN_BYTES: u64 = 8 << 20;
+/// Numbers that the library reads in one go.
+const LARGEST_BOX: u64 = 1 << 20;
+/// A box around the nodes is read where it holds at most this many numbers for each of them.
+const SPARSEST_BOX: u64 = 4096;
 /// A chunk larger than this is not believed.
 const LARGEST_CHUNK_BYTES: u64 = 4 << 30;
 /// A coordinate variable longer than this is not read whole.
@@ -117,6 +122,25 @@ impl Reader {
         Ok(values)
     }
 
+    /// All values of a coordinate variable, unpacked; NaN where they are missing.
+    pub(super) fn coordinate(&self, variable: &Variable) -> Result<Vec<f64>, NetcdfError> {
+        let packing = Packing::of(&self.header, variable)?;
+        Ok(self.all(variable)?.into_iter().map(|raw| packing.value(raw)).collect())
+    }
+
+    /// Texts along a variable of one dimension, read by the library; empty where there are none.
+    pub(super) fn texts(&self, variable: &Variable) -> Vec<String> {
+        let shape = self.header.shape(variable);
+        let (Ok(file), [count]) = (self.by_library(), &shape[..]) else { return Vec::new() };
+        let Some(found) = file.variable(&variable.name) else { return Vec::new() };
+        (0..*count as usize).map_while(|at| contain(|| found.get_string([at..at + 1])).ok()?.ok()).collect()
+    }
+
+    fn by_library(&self) -> Result<&netcdf::File, String> {
+        let opened = self.library.get_or_init(|| netcdf::open(&self.header.path).map_err(|error| error.to_string()));
+        opened.as_ref().map_err(Clone::clone)
+    }
+
     /// The wanted elements: step by step, node by node.
     pub(super) fn gather(&self, variable: &Variable, wanted: &Wanted<'_>) -> Result<Vec<f64>, NetcdfError> {
         let Some(number) = variable.number_type() else {
@@ -138,6 +162,11 @@ impl Reader {
             }
             Storage::Chunked(chunks) => self.gather_chunks(variable, wanted, number, chunks),
             Storage::Library => self.gather_by_library(variable, wanted),
+            Storage::Locked(filter) => Err(NetcdfError::Filter {
+                path: self.header.path.clone(),
+                variable: variable.name.clone(),
+                filter: filter.clone(),
+            }),
         }
     }
 
@@ -215,43 +244,40 @@ impl Reader {
             .try_fold(number.size() as u64, |bytes, length| bytes.checked_mul(*length))
             .filter(|bytes| *bytes <= LARGEST_CHUNK_BYTES)
             .ok_or_else(|| self.of_variable(variable, "its chunks are larger than 4 GiB".to_owned()))?;
-        // Elements in order of their chunk, so that each chunk is decoded once.
-        let mut places: Vec<(u64, u32, u32)> = Vec::new();
-        let mut index = Vec::new();
-        for step in wanted.steps.clone() {
-            for node in wanted.nodes {
-                wanted.index(step, *node, &mut index);
-                let mut chunk = 0;
-                let mut within = 0;
-                for (place, at) in index.iter().enumerate() {
-                    chunk = chunk * grid[place] + at / chunks.shape[place];
-                    within = within * chunks.shape[place] + at % chunks.shape[place];
-                }
-                places.push((chunk, within as u32, places.len() as u32));
-            }
-        }
-        places.sort_unstable();
-        let mut values = vec![f64::NAN; places.len()];
+        let parts = ChunkParts::of(wanted, chunks, &grid);
+        let width = wanted.nodes.len();
+        let mut values = vec![f64::NAN; parts.steps.len() * width];
+        let size = number.size();
+        let count = chunk_bytes as usize / size;
         SCRATCH.with_borrow_mut(|scratch| {
-            for of_chunk in places.chunk_by(|a, b| a.0 == b.0) {
-                // A chunk that was never written holds nothing but fill.
-                let Some(place) = chunks.blocks.get(&of_chunk[0].0) else { continue };
-                let planes = self.load_chunk(variable, chunks, *place, chunk_bytes, number, scratch)?;
-                let size = number.size();
-                let count = chunk_bytes as usize / size;
-                let mut bytes = [0_u8; 8];
-                let data = if planes.inflated { &scratch.inflated } else { &scratch.stored };
-                for (_, within, slot) in of_chunk {
-                    let within = *within as usize;
-                    for (k, byte) in bytes[..size].iter_mut().enumerate() {
-                        // Shuffled bytes lie in planes: all first bytes, then all second bytes ...
-                        *byte = if planes.shuffled { data[k * count + within] } else { data[within * size + k] };
+            for of_steps in parts.steps.chunk_by(|a, b| a.chunk == b.chunk) {
+                for of_nodes in parts.nodes.chunk_by(|a, b| a.chunk == b.chunk) {
+                    // A chunk that was never written holds nothing but fill.
+                    let Some(place) = chunks.blocks.get(&(of_steps[0].chunk + of_nodes[0].chunk)) else { continue };
+                    let loaded = self.load_chunk(variable, chunks, *place, chunk_bytes, number, scratch)?;
+                    let data = if loaded.inflated { &scratch.inflated } else { &scratch.stored };
+                    let mut bytes = [0_u8; 8];
+                    for step in of_steps {
+                        for node in of_nodes {
+                            let within = (step.within + node.within) as usize;
+                            for (k, byte) in bytes[..size].iter_mut().enumerate() {
+                                // Shuffled bytes lie in planes: all first bytes, then all second bytes ...
+                                *byte =
+                                    if loaded.shuffled { data[k * count + within] } else { data[within * size + k] };
+                            }
+                            values[step.slot * width + node.slot] = number.decode(&bytes[..size], chunks.big_endian);
+                        }
                     }
-                    values[*slot as usize] = number.decode(&bytes[..size], chunks.big_endian);
                 }
             }
             Ok(())
         })?;
+        for (slot, index) in parts.beyond {
+            match slot {
+                Beyond::Step => values[index * width..(index + 1) * width].fill(f64::NAN),
+                Beyond::Node => values.iter_mut().skip(index).step_by(width).for_each(|value| *value = f64::NAN),
+            }
+        }
         Ok(values)
     }
 
@@ -325,19 +351,53 @@ impl Reader {
             action: format!("variable `{}` cannot be read", variable.name),
             problem,
         };
-        let opened = self.library.get_or_init(|| netcdf::open(&self.header.path).map_err(|error| error.to_string()));
-        let file = opened.as_ref().map_err(|problem| failed(problem.clone()))?;
+        let file = self.by_library().map_err(&failed)?;
         let found = file.variable(&variable.name).ok_or_else(|| failed("it is not there any more".to_owned()))?;
         let mut values = Vec::with_capacity((wanted.steps.end - wanted.steps.start) as usize * wanted.nodes.len());
+        let read = |extents: Vec<std::ops::Range<usize>>| -> Result<Vec<f64>, NetcdfError> {
+            contain(|| found.get_values(extents)).map_err(&failed)?.map_err(|error| failed(error.to_string()))
+        };
+        // The box around all nodes, several steps at a time, where it is not too much larger than they are; else one by one.
+        let ends = |of: fn(&(u64, u64)) -> u64| {
+            let (low, high) = (wanted.nodes.iter().map(of).min(), wanted.nodes.iter().map(of).max());
+            low.zip(high).map_or(0..0, |(low, high)| low..high + 1)
+        };
+        let rows = if wanted.row.is_some() { ends(|node| node.0) } else { 0..1 };
+        let columns = if wanted.column.is_some() { ends(|node| node.1) } else { 0..1 };
+        let (height, width) = (rows.end - rows.start, columns.end - columns.start);
+        let in_box = height.saturating_mul(width);
+        let as_box = in_box <= LARGEST_BOX && in_box <= (wanted.nodes.len() as u64).saturating_mul(SPARSEST_BOX);
+        let mut step = wanted.steps.start;
+        while step < wanted.steps.end && as_box {
+            let end = (step + (LARGEST_BOX / in_box.max(1)).max(1)).min(wanted.steps.end);
+            let mut extents: Vec<_> = wanted.fixed.iter().map(|at| *at as usize..*at as usize + 1).collect();
+            for (place, range) in [(wanted.step, &(step..end)), (wanted.row, &rows), (wanted.column, &columns)] {
+                if let Some(place) = place {
+                    extents[place] = range.start as usize..range.end as usize;
+                }
+            }
+            // The strides of the box: last dimension of the variable fastest.
+            let stride = |place: Option<usize>| -> usize {
+                place.map_or(0, |place| extents[place + 1..].iter().map(ExactSizeIterator::len).product())
+            };
+            let strides = [stride(wanted.step), stride(wanted.row), stride(wanted.column)];
+            let all = read(extents)?;
+            for k in 0..(end - step) as usize {
+                for (row, column) in wanted.nodes {
+                    let (row, column) = ((row - rows.start) as usize, (column - columns.start) as usize);
+                    let at = k * strides[0]
+                        + if wanted.row.is_some() { row * strides[1] } else { 0 }
+                        + if wanted.column.is_some() { column * strides[2] } else { 0 };
+                    values.push(all.get(at).copied().unwrap_or(f64::NAN));
+                }
+            }
+            step = end;
+        }
         let mut index = Vec::new();
-        for step in wanted.steps.clone() {
+        for step in step..wanted.steps.end {
             for node in wanted.nodes {
                 wanted.index(step, *node, &mut index);
-                let extents: Vec<std::ops::Range<usize>> =
-                    index.iter().map(|at| *at as usize..*at as usize + 1).collect();
-                let value: Vec<f64> = contain(|| found.get_values(extents))
-                    .map_err(&failed)?
-                    .map_err(|error| failed(error.to_string()))?;
+                let value = read(index.iter().map(|at| *at as usize..*at as usize + 1).collect())?;
                 values.push(value.first().copied().unwrap_or(f64::NAN));
             }
         }
@@ -346,6 +406,69 @@ impl Reader {
 
     fn of_variable(&self, variable: &Variable, problem: String) -> NetcdfError {
         NetcdfError::Variable { path: self.header.path.clone(), variable: variable.name.clone(), problem }
+    }
+}
+
+/// A wanted step or node: its share in the number of its chunk, its share in the place within the chunk, and its place among
+/// the wanted. Both numbers are sums over dimensions, so that steps and nodes can be worked out apart.
+#[derive(Debug, Clone, Copy)]
+struct ChunkPart {
+    chunk: u64,
+    within: u64,
+    slot: usize,
+}
+
+/// What lies beyond the stored extent of a variable.
+#[derive(Debug, Clone, Copy)]
+enum Beyond {
+    Step,
+    Node,
+}
+
+/// Wanted steps and nodes in order of their chunks, so that each chunk is decoded once.
+struct ChunkParts {
+    steps: Vec<ChunkPart>,
+    nodes: Vec<ChunkPart>,
+    beyond: Vec<(Beyond, usize)>,
+}
+
+impl ChunkParts {
+    fn of(wanted: &Wanted<'_>, chunks: &Chunks, grid: &[u64]) -> Self {
+        let stride = |lengths: &[u64], place: usize| lengths[place + 1..].iter().product::<u64>();
+        let part = |place: usize, at: u64| {
+            let chunk = at / chunks.shape[place] * stride(grid, place);
+            (chunk, at % chunks.shape[place] * stride(&chunks.shape, place))
+        };
+        let named = [wanted.step, wanted.row, wanted.column];
+        // The dimensions that are fixed count to every step.
+        let (mut fixed_chunk, mut fixed_within) = (0, 0);
+        let mut all_beyond = false;
+        for (place, at) in wanted.fixed.iter().enumerate().filter(|(place, _)| !named.contains(&Some(*place))) {
+            let (chunk, within) = part(place, *at);
+            all_beyond |= *at >= chunks.extent[place];
+            fixed_chunk += chunk;
+            fixed_within += within;
+        }
+        let is_beyond = |place: Option<usize>, at: u64| place.is_some_and(|place| at >= chunks.extent[place]);
+        let mut parts = Self { steps: Vec::new(), nodes: Vec::new(), beyond: Vec::new() };
+        for (slot, step) in wanted.steps.clone().enumerate() {
+            let (chunk, within) = wanted.step.map_or((0, 0), |place| part(place, step));
+            parts.steps.push(ChunkPart { chunk: fixed_chunk + chunk, within: fixed_within + within, slot });
+            if all_beyond || is_beyond(wanted.step, step) {
+                parts.beyond.push((Beyond::Step, slot));
+            }
+        }
+        for (slot, (row, column)) in wanted.nodes.iter().enumerate() {
+            let of_row = wanted.row.map_or((0, 0), |place| part(place, *row));
+            let of_column = wanted.column.map_or((0, 0), |place| part(place, *column));
+            parts.nodes.push(ChunkPart { chunk: of_row.0 + of_column.0, within: of_row.1 + of_column.1, slot });
+            if is_beyond(wanted.row, *row) || is_beyond(wanted.column, *column) {
+                parts.beyond.push((Beyond::Node, slot));
+            }
+        }
+        parts.steps.sort_by_key(|part| part.chunk);
+        parts.nodes.sort_by_key(|part| part.chunk);
+        parts
     }
 }
 

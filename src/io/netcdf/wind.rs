@@ -21,6 +21,8 @@ const BRIDGED_STEPS: i64 = 2;
 const UNCHUNKED_STEPS: u64 = 256;
 /// Coordinates of two files are the same up to this many degrees (float32 against float64).
 const SAME_PLACE_DEG: f64 = 1e-4;
+/// A valid range that leaves less than this of the winds is worth a remark, m/s.
+const NARROWEST_RANGE_M_S: f64 = 5.0;
 
 /// What a source's numbers are.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -47,6 +49,8 @@ struct Part {
     /// For each stored step its place among the source's steps.
     merged: Vec<Option<usize>>,
     to_unit: f64,
+    /// Stored steps that the archive may still replace; empty where none is known.
+    preliminary: Vec<bool>,
 }
 
 /// Gridded wind, opened.
@@ -74,6 +78,15 @@ pub fn open_wind(source: SourceId, files: &[PathBuf], options: &WindOptions) -> 
         readers.push(Reader::open(read_header(path)?)?);
     }
     let (kind, found) = components(&readers, options)?;
+    for (index, reader) in readers.iter().enumerate() {
+        if !found.iter().flatten().any(|(of_file, _)| *of_file == index) {
+            return Err(no_variable(
+                reader,
+                "a wind like that of the other files",
+                "wind.files` to leave it out, or `wind.eastward",
+            ));
+        }
+    }
     let mut notes = Vec::new();
     let mut flags = FlagSet::default();
     let mut parts: Vec<(Part, Vec<Option<Instant>>)> = Vec::new();
@@ -103,7 +116,12 @@ pub fn open_wind(source: SourceId, files: &[PathBuf], options: &WindOptions) -> 
             return Err(NetcdfError::Disagree {
                 path: readers[other.reader].header.path.clone(),
                 other: readers[first.reader].header.path.clone(),
-                problem: format!("variable `{}` lies on another grid", other.variable),
+                problem: format!(
+                    "variable `{}` lies on another grid: {}; expected {}",
+                    other.variable,
+                    grid_words(&other.placement.grid),
+                    grid_words(&grid)
+                ),
             });
         }
     }
@@ -173,7 +191,11 @@ fn components<'a>(readers: &'a [Reader], options: &WindOptions) -> Result<(WindK
 }
 
 fn no_variable(reader: &Reader, wanted: &'static str, key: &'static str) -> NetcdfError {
-    NetcdfError::NoVariable { path: reader.header.path.clone(), wanted, candidates: candidates(&reader.header), key }
+    let mut candidates = candidates(&reader.header);
+    if !reader.header.groups.is_empty() {
+        candidates.push_str(&format!(" (variables in the groups {} are not read)", reader.header.groups.join(", ")));
+    }
+    NetcdfError::NoVariable { path: reader.header.path.clone(), wanted, candidates, key }
 }
 
 fn component_name(kind: WindKind, component: usize) -> &'static str {
@@ -231,6 +253,15 @@ fn part(
             variable.name
         ));
     }
+    if let (Some((low, high)), false) = (packing.valid_span(), is_direction)
+        && (high - low) * to_unit < NARROWEST_RANGE_M_S
+    {
+        notes.push(format!(
+            "variable `{}`: its valid range, in packed units, leaves only winds from {low} to {high}; all others are missing (a range meant in unpacked units?)",
+            variable.name
+        ));
+    }
+    let preliminary;
     let steps = match (&placement.time, placement.step) {
         (Some(name), Some(place)) => {
             let name = options.time.clone().unwrap_or_else(|| name.clone());
@@ -244,6 +275,15 @@ fn part(
                     "its time `{name}` has several dimensions (a forecast with lead times?); choose one lead time first"
                 )));
             }
+            if time.text("standard_name") == Some("forecast_reference_time") && options.time.is_none() {
+                return Err(refuse(format!(
+                    "its time `{name}` is when forecasts start, not when they are valid (set `wind.time` to the variable of valid times)"
+                )));
+            }
+            if reader.header.shape(time).first() == Some(&0) {
+                return Err(refuse(format!("it has no step: its time `{name}` has length zero")));
+            }
+            preliminary = preliminary_steps(reader, variable, place);
             let axis = time_axis::decode(reader, time, options.time_units.as_deref(), options.calendar.as_deref())?;
             notes.extend(axis.notes);
             let count = reader.header.shape(variable)[place] as usize;
@@ -262,8 +302,34 @@ fn part(
         packing,
         merged: Vec::new(),
         to_unit,
+        preliminary,
     };
     Ok((part, steps))
+}
+
+/// Which stored steps are preliminary: archives write the version of each step along the time, 1 for final data and 5 for
+/// preliminary ("0001", "0005" as texts).
+fn preliminary_steps(reader: &Reader, variable: &Variable, step: usize) -> Vec<bool> {
+    let along = [variable.dimensions[step]];
+    let Some(version) = reader.header.variable("expver").filter(|version| version.dimensions == along) else {
+        return Vec::new();
+    };
+    let is_preliminary: Vec<bool> = if version.number_type().is_some() {
+        reader.coordinate(version).unwrap_or_default().iter().map(|version| (version - 5.0).abs() < 0.5).collect()
+    } else {
+        reader.texts(version).iter().map(|version| version.trim().parse() == Ok(5)).collect()
+    };
+    if is_preliminary.contains(&true) { is_preliminary } else { Vec::new() }
+}
+
+/// A grid in words.
+fn grid_words(grid: &Grid) -> String {
+    let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
+    format!(
+        "{} x {} nodes from {south} to {north} degrees north and {west} to {east} degrees east",
+        grid.latitude.len(),
+        grid.longitude.len()
+    )
 }
 
 /// What turns a direction's numbers into degrees, with its sense in the sign: positive for coming-from, negative for going-to.
@@ -334,11 +400,8 @@ fn merge(
 
 fn same_grid(a: &Grid, b: &Grid) -> bool {
     let same = |a: &crate::numerics::axis::Axis, b: &crate::numerics::axis::Axis| {
-        a.len() == b.len()
-            && (0..a.len()).all(|k| match (a.value_at(k), b.value_at(k)) {
-                (Some(a), Some(b)) => (a - b).abs() < SAME_PLACE_DEG,
-                (a, b) => a.is_none() == b.is_none(),
-            })
+        // Stored the same way round as well: a node goes by its stored row and column.
+        a.len() == b.len() && a.nodes().zip(b.nodes()).all(|(a, b)| a.0 == b.0 && (a.1 - b.1).abs() < SAME_PLACE_DEG)
     };
     same(&a.latitude, &b.latitude) && same(&a.longitude, &b.longitude)
 }
@@ -394,9 +457,16 @@ impl WindSource {
         (part.component, &part.merged[slab.stored_steps.clone()])
     }
 
-    /// How far two readings of one step may differ before they are a conflict: what packing can round away.
-    pub fn tolerance(&self) -> f64 {
-        1e-4 + self.parts.iter().map(|part| part.packing.resolution() * part.to_unit.abs()).fold(0.0, f64::max)
+    /// Whether two readings of one step contradict each other: they differ by more than packing can round away.
+    pub fn contradict(&self, component: usize, first: f64, second: f64) -> bool {
+        let of_component = self.parts.iter().filter(|part| part.component == component);
+        let resolution = of_component.map(|part| part.packing.resolution() * part.to_unit.abs()).fold(0.0, f64::max);
+        let apart = if self.kind == WindKind::SpeedAndDirection && component == 1 {
+            (first - second + 540.0).rem_euclid(360.0) - 180.0
+        } else {
+            first - second
+        };
+        apart.abs() > 1e-4 + resolution
     }
 
     /// Name of the file that a slab comes from.
@@ -407,12 +477,27 @@ impl WindSource {
     /// The error for two files that say different things about one step.
     pub fn conflict(&self, slab: &Slab, step: Instant, first: f64, second: f64) -> NetcdfError {
         let part = &self.parts[slab.file];
-        NetcdfError::Variable {
-            path: self.readers[part.reader].header.path.clone(),
-            variable: part.variable.clone(),
-            problem: format!(
-                "the step {step} is there twice with different values ({first} and {second}); expected one value (leave one file out)"
-            ),
+        let place = self.meta.steps.binary_search(&step).ok();
+        let holds = |other: &Part| {
+            other.component == part.component && other.reader != part.reader && other.merged.contains(&place)
+        };
+        let path = self.readers[part.reader].header.path.clone();
+        match self.parts.iter().find(|other| holds(other)) {
+            Some(other) => NetcdfError::Disagree {
+                path,
+                other: self.readers[other.reader].header.path.clone(),
+                problem: format!(
+                    "variable `{}` is {second} at the step {step}, where another file has {first}; expected one value (leave one of the files out)",
+                    part.variable
+                ),
+            },
+            None => NetcdfError::Variable {
+                path,
+                variable: part.variable.clone(),
+                problem: format!(
+                    "the step {step} is there twice with different values ({first} and {second}); expected one value"
+                ),
+            },
         }
     }
 }
@@ -468,6 +553,7 @@ impl FieldSource for WindSource {
         let nodes: Vec<(u64, u64)> = nodes.iter().map(|node| (node.row as u64, node.column as u64)).collect();
         let steps = slab.stored_steps.start as u64..slab.stored_steps.end as u64;
         let mut values: Vec<f64> = Vec::new();
+        let mut preliminary: Vec<bool> = Vec::new();
         for (attempt, fixed) in part.placement.fixed.iter().enumerate() {
             let wanted = Wanted {
                 fixed,
@@ -481,9 +567,11 @@ impl FieldSource for WindSource {
             if attempt == 0 {
                 values = read.collect();
             } else {
-                for (value, other) in values.iter_mut().zip(read) {
-                    if value.is_nan() {
+                preliminary.resize(values.len(), false);
+                for ((value, is_preliminary), other) in values.iter_mut().zip(&mut preliminary).zip(read) {
+                    if value.is_nan() && !other.is_nan() {
                         *value = other;
+                        *is_preliminary = true;
                     }
                 }
             }
@@ -491,7 +579,15 @@ impl FieldSource for WindSource {
                 break;
             }
         }
-        Ok(Block { values })
+        if !part.preliminary.is_empty() {
+            preliminary.resize(values.len(), false);
+            for (of_step, stored) in preliminary.chunks_mut(nodes.len().max(1)).zip(slab.stored_steps.clone()) {
+                if part.preliminary.get(stored) == Some(&true) {
+                    of_step.fill(true);
+                }
+            }
+        }
+        Ok(Block { values, preliminary })
     }
 }
 

@@ -47,7 +47,7 @@ pub(super) fn speed_unit_m_s(text: &str) -> Option<f64> {
     let plain: String = text.trim().to_lowercase().replace("**", "").replace('^', "");
     let plain = plain.split([' ', '.', '·', '*']).filter(|part| !part.is_empty()).collect::<Vec<_>>().join(" ");
     match plain.as_str() {
-        "m s-1" | "m/s" | "m s" | "m / s" | "ms-1" | "m sec-1" | "m/sec" | "meter/second" | "metre/second"
+        "m s-1" | "m/s" | "m / s" | "ms-1" | "m sec-1" | "m/sec" | "meter/second" | "metre/second"
         | "meters/second" | "metres/second" | "meters per second" | "metres per second" | "meter second-1"
         | "metre second-1" | "meter s-1" | "metre s-1" | "mps" => Some(1.0),
         // One international knot is 1852 m an hour, exactly.

@@ -1,16 +1,18 @@
 //! The figures of a study, filled from its results.
 
 use super::words::{estimate, file_part, level_label, onset, reference};
-use super::{Pairing, Placed, ReportInput};
+use super::{Pairing, Placed, ReportInput, deployment_labels};
 use crate::model::{BandLevels, FittedBand, Track};
 use crate::numerics::quantile::quantiles;
 use crate::report::{
     AgainstFrequency, Coverage, CoverageKind, CoverageRow, CoverageSpan, CurvePoint, Estimate, FrequencyPanel,
-    FrequencyPoint, FrequencySeries, LevelAgainstWind, MapNodes, MapSite, ONSET_LABEL, Residuals, SLOPE_LABEL,
-    ShadedPeriod, SiteMap, SpectraByWindClass, TimeLine, TimePanel, TimeSeries, WindClassSpectrum, WindDistribution,
-    WindSample, against_frequency, coverage, level_against_wind, level_against_wind_grid, residuals, site_map,
-    spectra_by_wind_class, time_series, wind_distribution,
+    FrequencyPoint, FrequencySeries, LevelAgainstWind, MapNodes, MapSite, ONSET_LABEL, ResidualClass, ResidualFamily,
+    Residuals, SLOPE_LABEL, ShadedPeriod, SiteMap, SpectraByWindClass, TimeLine, TimePanel, TimeSeries,
+    WindClassSpectrum, WindDistribution, WindSample, against_frequency, coverage, level_against_wind,
+    level_against_wind_grid, residuals, site_map, spectra_by_wind_class, time_series, wind_distribution,
 };
+use crate::science::level_wind::{residual_classes, residuals as residuals_of};
+use crate::units::{ComingFrom, Compass, Instant};
 
 /// Bands drawn in the time series when the study names none: the lowest, the middle, the highest.
 const TIME_SERIES_BANDS: usize = 3;
@@ -93,8 +95,8 @@ pub(super) fn of_pairing(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<
         });
         placed.push(Placed {
             name: format!("{stem}_{centre}_residuals"),
-            caption: format!("Level minus fitted level over time, {}.", band.short_title),
-            figure: residuals(&residual_input(pairing, index, &title)),
+            caption: format!("Level minus fitted level over time, {}, and its mean by hour, month and wind direction with 95 % intervals. Classes that stand out do so after correction for the number of classes (Holm).", band.short_title),
+            figure: residuals(&residual_input(input, pairing, index, &title)),
         });
     }
     placed
@@ -305,28 +307,75 @@ fn outside_deployments(pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
     shaded
 }
 
-fn residual_input(pairing: &Pairing<'_>, index: usize, title: &str) -> Residuals {
-    let mut time_ms = Vec::new();
-    let mut residual_db = Vec::new();
-    if let Some(fitted) = pairing.fitted.get(index) {
-        for (k, window) in pairing.record.windows.iter().enumerate() {
-            let level_db = pairing.levels_db[index][k];
-            if let Some(curve_db) = fitted.relation.level_db(pairing.wind_m_s[k])
-                && level_db.is_finite()
-                && curve_db.is_finite()
-            {
-                time_ms.push(window.centre().0);
-                residual_db.push(level_db - curve_db);
-            }
-        }
-    }
-    Residuals {
+fn residual_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, index: usize, title: &str) -> Residuals {
+    let times_ms: Vec<i64> = pairing.record.windows.iter().map(|window| window.centre().0).collect();
+    let mut figure = Residuals {
         title: format!("{title}, {}: residuals", pairing.record.bands[index].band.label()),
         notes: Vec::new(),
-        time_ms,
-        residual_db,
+        time_ms: Vec::new(),
+        residual_db: Vec::new(),
         families: Vec::new(),
+    };
+    let Some(fitted) = pairing.fitted.get(index) else { return figure };
+    let deployment = deployment_labels(pairing.record);
+    let of_window = residuals_of(&pairing.wind_m_s, &pairing.levels_db[index], deployment.as_deref(), &fitted.relation);
+    if let Some(block_h) = fitted.relation.diagnostics.resampled_block_length_h {
+        let seed = input.study.relation.options.seed;
+        figure.families = residual_families(pairing, &times_ms, &of_window, block_h, seed);
     }
+    for (time, residual) in times_ms.iter().zip(of_window) {
+        if residual.is_finite() {
+            figure.time_ms.push(*time);
+            figure.residual_db.push(residual);
+        }
+    }
+    figure
+}
+
+/// Mean residuals by hour of day, month, and direction of the wind: what the wind speed alone does not explain.
+fn residual_families(
+    pairing: &Pairing<'_>,
+    times_ms: &[i64],
+    residual_db: &[f64],
+    block_h: f64,
+    seed: u64,
+) -> Vec<ResidualFamily> {
+    const MONTHS: [&str; 12] = ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"];
+    const SECTORS: [&str; 8] = ["N", "NE", "E", "SE", "S", "SW", "W", "NW"];
+    let calendar = |pick: &dyn Fn(i32, u32, f64) -> u32| -> Vec<Option<u32>> {
+        let at = |time: &i64| Instant(*time).year_month_hour().map(|(year, month, hour)| pick(year, month, hour));
+        times_ms.iter().map(at).collect()
+    };
+    let hours = calendar(&|_, _, hour| hour as u32);
+    let months = calendar(&|_, month, _| month - 1);
+    let sectors: Vec<Option<u32>> = pairing
+        .conditions
+        .wind
+        .iter()
+        .map(|wind| {
+            let wind = wind.as_ref()?;
+            let from = Compass::<ComingFrom>::of_wind(wind.eastward_mean_m_s, wind.northward_mean_m_s)?;
+            // Eight sectors of 45 degrees, each about its name.
+            Some(((from.degrees() + 22.5) / 45.0) as u32 % 8)
+        })
+        .collect();
+    let family = |label: &str, classes: &[Option<u32>], name: &dyn Fn(u32) -> String| ResidualFamily {
+        label: label.to_owned(),
+        classes: residual_classes(times_ms, residual_db, classes, block_h, seed)
+            .into_iter()
+            .map(|class| ResidualClass {
+                label: name(class.class),
+                count: class.samples,
+                residual_db: Estimate::value(class.mean_db, class.low_db, class.high_db),
+                stands_out: class.p_holm < 0.05,
+            })
+            .collect(),
+    };
+    vec![
+        family("Hour of day (UTC)", &hours, &|hour| format!("{hour:02}")),
+        family("Month", &months, &|month| MONTHS[month as usize % 12].to_owned()),
+        family("Wind from", &sectors, &|sector| SECTORS[sector as usize % 8].to_owned()),
+    ]
 }
 
 fn map(input: &ReportInput<'_>) -> SiteMap {

@@ -5,7 +5,7 @@ mod page;
 mod words;
 
 use super::fitting::wind_speed_m_s;
-use super::matching::{Matched, reason_of_pair};
+use super::matching::{Matched, deployment_labels, used_levels_db};
 use super::progress::Progress;
 use super::provenance::InputRecord;
 use crate::Error;
@@ -102,18 +102,7 @@ fn pairings<'a>(input: &'a ReportInput<'a>) -> Vec<Pairing<'a>> {
                 .collect();
             let which = input.study.matching.wind_speed;
             let wind_m_s = conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), which)).collect();
-            let levels_db = record
-                .bands
-                .iter()
-                .map(|band| {
-                    (0..record.windows.len())
-                        .map(|k| match reason_of_pair(record, band, conditions, k) {
-                            None => band.level_db[k],
-                            Some(_) => f64::NAN,
-                        })
-                        .collect()
-                })
-                .collect();
+            let levels_db = used_levels_db(record, conditions);
             pairings.push(Pairing { record, conditions, fitted, wind_m_s, levels_db });
         }
     }

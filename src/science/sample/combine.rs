@@ -14,6 +14,8 @@ pub struct NodeWinds<'a> {
     pub second: &'a [f64],
     /// Whether the second number is a direction.
     pub second_is_direction: bool,
+    /// Whether a node's numbers are preliminary; empty where none is.
+    pub preliminary: &'a [bool],
 }
 
 /// Wind at a site at one step.
@@ -28,6 +30,15 @@ pub struct SiteStep {
 }
 
 impl NodeWinds<'_> {
+    /// The flags of a node's numbers.
+    fn flags(&self, node: NodeId) -> FlagSet {
+        let place = self.nodes.binary_search(&node).ok();
+        match place.and_then(|place| self.preliminary.get(place)) {
+            Some(true) => FlagSet::of(Flag::PreliminaryVersion),
+            _ => FlagSet::default(),
+        }
+    }
+
     /// Components and speed at a node; `None` where either number is missing.
     fn at(&self, node: NodeId) -> Option<SiteStep> {
         let place = self.nodes.binary_search(&node).ok()?;
@@ -61,13 +72,14 @@ pub fn wind_at_site(
     winds: &NodeWinds<'_>,
 ) -> Result<(SiteStep, FlagSet), Missing> {
     if let SpatialRule::Nearest { .. } = rule {
-        let first = stencil.nodes.iter().find_map(|(node, _)| winds.at(*node));
-        return first.map(|wind| (wind, FlagSet::default())).ok_or(Missing::LandOrMissing);
+        let first = stencil.nodes.iter().find_map(|(node, _)| Some((winds.at(*node)?, winds.flags(*node))));
+        return first.ok_or(Missing::LandOrMissing);
     }
     let keeps_rest = !matches!(rule, SpatialRule::Bilinear(CoastRule::Missing));
     let mut sum = SiteStep { eastward_m_s: 0.0, northward_m_s: 0.0, scalar_speed_m_s: 0.0 };
     let mut valid = 0.0;
     let mut lost = false;
+    let mut flags = FlagSet::default();
     for (node, weight) in &stencil.nodes {
         if *weight == 0.0 {
             continue;
@@ -78,6 +90,7 @@ pub fn wind_at_site(
                 sum.northward_m_s += weight * wind.northward_m_s;
                 sum.scalar_speed_m_s += weight * wind.scalar_speed_m_s;
                 valid += weight;
+                flags = flags.union(winds.flags(*node));
             }
             None if keeps_rest => lost = true,
             None => return Err(Missing::LandOrMissing),
@@ -87,12 +100,13 @@ pub fn wind_at_site(
         return Err(Missing::LandOrMissing);
     }
     if !lost {
-        return Ok((sum, FlagSet::default()));
+        return Ok((sum, flags));
     }
     let scaled = SiteStep {
         eastward_m_s: sum.eastward_m_s / valid,
         northward_m_s: sum.northward_m_s / valid,
         scalar_speed_m_s: sum.scalar_speed_m_s / valid,
     };
-    Ok((scaled, FlagSet::of(Flag::CoastRenormalised)))
+    flags.insert(Flag::CoastRenormalised);
+    Ok((scaled, flags))
 }

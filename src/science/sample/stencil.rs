@@ -64,46 +64,55 @@ fn ends(bracket: Bracket) -> Vec<(usize, f64)> {
     }
 }
 
-/// Beyond the last row of a grid that closes around the globe and comes within one row of the pole: the mean of the row
-/// stands for the pole, flagged.
+/// Beyond the last row of a grid that closes around the globe and comes within one row of the pole: the last row at the
+/// site's longitude, flagged. (A mean over the row would be wrong: components of one wind turn with the longitude.)
 fn polar(grid: &Grid, place: Point) -> Option<Stencil> {
-    if !grid.longitude.is_periodic() || grid.latitude.len() < 2 {
+    if !grid.longitude.is_periodic() {
         return None;
     }
-    let (low, high) = grid.latitude.limits();
-    let step = (high - low) / (grid.latitude.len() - 1) as f64;
     let latitude = place.latitude_deg();
-    let (edge, pole) = if latitude > high { (high, 90.0) } else { (low, -90.0) };
-    if f64::abs(pole - edge) > step {
+    let (_, high) = grid.latitude.limits();
+    let ((row, edge), (_, inner), pole) = if latitude > high {
+        let mut rows = grid.latitude.nodes().rev();
+        (rows.next()?, rows.next()?, 90.0)
+    } else {
+        let mut rows = grid.latitude.nodes();
+        (rows.next()?, rows.next()?, -90.0)
+    };
+    if f64::abs(pole - edge) > f64::abs(edge - inner) {
         return None;
     }
-    let row = grid.latitude.bracket(edge)?.before;
-    let share = (latitude - edge) / (pole - edge);
     let column = grid.longitude.bracket_longitude(place.longitude_deg())?;
-    let count = grid.longitude.len();
-    let mut weights = vec![share / count as f64; count];
-    for (node, weight) in ends(column) {
-        weights[node] += (1.0 - share) * weight;
-    }
-    let nodes = weights.into_iter().enumerate().map(|(column, weight)| (NodeId { row, column }, weight)).collect();
+    let nodes = ends(column).into_iter().map(|(column, weight)| (NodeId { row, column }, weight)).collect();
     Some(Stencil { nodes, flags: FlagSet::of(Flag::PoleRow) })
 }
 
-/// Nodes within a distance, nearest first; ties in stored order.
+/// Nodes within a distance, nearest first; ties in stored order. Only rows and columns that can hold one are looked at.
 fn within(grid: &Grid, place: Point, radius_km: f64) -> Vec<(NodeId, f64)> {
+    let radius = radius_km / EARTH_RADIUS_KM;
+    // A little more than needed: the distance decides.
+    let radius_deg = radius.to_degrees() * (1.0 + 1e-6) + 1e-6;
+    let latitude_deg = place.latitude_deg();
+    // Where the circle holds no pole, its widest meridians are asin(sin r / cos latitude) away.
+    let columns_deg = if latitude_deg.abs() + radius_deg < 90.0 {
+        libm::asin((libm::sin(radius) / libm::cos(latitude_deg.to_radians())).min(1.0)).to_degrees() * (1.0 + 1e-6)
+            + 1e-6
+    } else {
+        180.0
+    };
+    let columns: Vec<(usize, f64)> = grid
+        .longitude
+        .around_longitude(place.longitude_deg(), columns_deg)
+        .into_iter()
+        .map(|(column, longitude)| (column, (longitude + 180.0).rem_euclid(360.0) - 180.0))
+        .collect();
     let mut near = Vec::new();
-    for row in 0..grid.latitude.len() {
-        let Some(latitude) = grid.latitude.value_at(row) else { continue };
-        if (latitude - place.latitude_deg()).abs().to_radians() * EARTH_RADIUS_KM > radius_km {
-            continue;
-        }
-        for column in 0..=grid.longitude.len() {
-            let Some(longitude) = grid.longitude.value_at(column) else { continue };
-            let turned = (longitude + 180.0).rem_euclid(360.0) - 180.0;
-            let Ok(node) = Point::new(latitude.clamp(-90.0, 90.0), turned) else { continue };
+    for (row, latitude) in grid.latitude.between(latitude_deg - radius_deg, latitude_deg + radius_deg) {
+        for (column, longitude) in &columns {
+            let Ok(node) = Point::new(latitude.clamp(-90.0, 90.0), *longitude) else { continue };
             let distance = distance_km(place, node);
             if distance <= radius_km {
-                near.push((NodeId { row, column }, distance));
+                near.push((NodeId { row, column: *column }, distance));
             }
         }
     }
@@ -152,13 +161,49 @@ mod tests {
     }
 
     #[test]
-    fn beyond_the_last_row_of_a_global_grid_the_pole_row_serves() {
+    fn beyond_the_last_row_of_a_global_grid_that_row_serves_with_a_flag() {
         let columns: Vec<f64> = (0..36).map(|k| f64::from(k) * 10.0).collect();
         let grid = grid(&[-85.0, -75.0, 75.0, 85.0], &columns);
-        assert_eq!(stencil(&grid, Point::new(89.0, 12.0).unwrap(), &rule()).err(), None);
-        let polar = stencil(&grid, Point::new(90.0, 12.0).unwrap(), &rule()).unwrap();
-        assert!(polar.nodes.iter().all(|(_, weight)| (weight - 1.0 / 36.0).abs() < 1e-12));
-        let regional = Grid { longitude: Axis::longitude(&[0.0, 10.0, 20.0]).unwrap(), ..grid };
+        for (latitude, row) in [(89.0, 3), (90.0, 3), (-86.0, 0)] {
+            let polar = stencil(&grid, Point::new(latitude, 12.0).unwrap(), &rule()).unwrap();
+            assert_eq!(polar.flags, FlagSet::of(Flag::PoleRow));
+            let nodes: Vec<NodeId> = polar.nodes.iter().map(|(node, _)| *node).collect();
+            assert_eq!(nodes, [NodeId { row, column: 1 }, NodeId { row, column: 2 }]);
+            assert!((polar.nodes[1].1 - 0.2).abs() < 1e-12);
+        }
+        let regional = Grid { longitude: Axis::longitude(&[0.0, 10.0, 20.0]).unwrap(), ..grid.clone() };
         assert_eq!(stencil(&regional, Point::new(89.0, 12.0).unwrap(), &rule()), Err(Missing::OutsideGrid));
+        let far = Grid { latitude: Axis::linear(&[60.0, 61.0]).unwrap(), ..grid };
+        assert_eq!(stencil(&far, Point::new(89.0, 12.0).unwrap(), &rule()), Err(Missing::OutsideGrid));
+    }
+
+    /// All nodes, one by one: what the search must give.
+    fn by_hand(grid: &Grid, place: Point, radius_km: f64) -> Vec<NodeId> {
+        let mut near: Vec<(f64, NodeId)> = Vec::new();
+        for (row, latitude) in grid.latitude.nodes() {
+            for (column, longitude) in grid.longitude.nodes() {
+                let turned = (longitude + 180.0).rem_euclid(360.0) - 180.0;
+                let distance = distance_km(place, Point::new(latitude, turned).unwrap());
+                if distance <= radius_km {
+                    near.push((distance, NodeId { row, column }));
+                }
+            }
+        }
+        near.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.cmp(&b.1)));
+        near.into_iter().map(|(_, node)| node).collect()
+    }
+
+    proptest::proptest! {
+        #[test]
+        fn the_search_around_a_place_misses_no_node(
+            latitude in -90.0..90.0f64, longitude in -180.0..180.0f64, radius_km in 1.0..4000.0f64, turned in 0..2
+        ) {
+            let columns: Vec<f64> = (0..72).map(|k| f64::from(k) * 5.0 - if turned == 0 { 0.0 } else { 180.0 }).collect();
+            let rows: Vec<f64> = (0..37).map(|k| 90.0 - f64::from(k) * 5.0).collect();
+            let grid = grid(&rows, &columns);
+            let place = Point::new(latitude, longitude).unwrap();
+            let found: Vec<NodeId> = within(&grid, place, radius_km).into_iter().map(|(node, _)| node).collect();
+            proptest::prop_assert_eq!(found, by_hand(&grid, place, radius_km));
+        }
     }
 }

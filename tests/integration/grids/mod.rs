@@ -1,5 +1,8 @@
 //! Gridded wind: formats, axes, time, packing; against numbers worked out by general-purpose libraries.
 
 mod formats;
+mod hazards;
+mod properties;
 mod reference;
+mod refusals;
 mod support;
