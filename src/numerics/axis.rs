@@ -80,20 +80,16 @@ impl Axis {
     /// When there are no values, or they are not finite or not monotone even after unwrapping.
     pub fn longitude(stored: &[f64]) -> Result<Self, AxisError> {
         check_finite(stored)?;
-        // The direction of the axis is that of most of its steps: the jump at a seam is one step.
-        let rising = stored.windows(2).filter(|pair| pair[1] > pair[0]).count() * 2 >= stored.len().saturating_sub(1);
-        let mut unwrapped = Vec::with_capacity(stored.len());
-        for (k, value) in stored.iter().enumerate() {
-            let mut value = *value;
-            if k > 0 {
-                let before: f64 = unwrapped[k - 1];
-                if rising && value <= before - 180.0 {
-                    value += 360.0 * ((before - value) / 360.0).ceil();
-                } else if !rising && value >= before + 180.0 {
-                    value -= 360.0 * ((value - before) / 360.0).ceil();
+        let mut unwrapped: Vec<f64> = Vec::with_capacity(stored.len());
+        for value in stored {
+            // From column to column the short way: a jump of more than half the circle is a seam.
+            let next = match unwrapped.last() {
+                Some(before) if (value - before).abs() > 180.0 => {
+                    before + (value - before + 180.0).rem_euclid(360.0) - 180.0
                 }
-            }
-            unwrapped.push(value);
+                _ => *value,
+            };
+            unwrapped.push(next);
         }
         let mut axis = Self::linear(&unwrapped)?;
         let count = axis.values.len();
@@ -292,6 +288,17 @@ mod tests {
         close(axis.bracket_longitude(180.5), 2, 3, 0.5);
         let above = Axis::longitude(&[21.0, 200.0, 379.0]).unwrap();
         close(above.bracket_longitude(10.0), 1, 2, 170.0 / 179.0);
+    }
+
+    #[test]
+    fn two_columns_across_the_seam_are_a_narrow_cell() {
+        for stored in [[359.75, 0.0], [179.75, -180.0], [-180.0, 179.75]] {
+            let axis = Axis::longitude(&stored).unwrap();
+            let (low, high) = axis.limits();
+            assert!((high - low - 0.25).abs() < 1e-9, "{stored:?}");
+            assert!(axis.bracket_longitude(90.0).is_none(), "{stored:?}");
+            assert!(axis.bracket_longitude(stored[0].max(stored[1]) + 0.1).is_some(), "{stored:?}");
+        }
     }
 
     #[test]

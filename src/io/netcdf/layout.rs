@@ -103,15 +103,16 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
     let refuse =
         |problem: String| NetcdfError::Variable { path: header.path.clone(), variable: variable.name.clone(), problem };
     let names = header.dimension_names(variable);
-    let shape = header.shape(variable);
     let mapping = grid_mapping(header, variable);
     if let Some(layout @ (Layout::RotatedPole | Layout::Projected)) = mapping {
         return Err(refuse(not_sampled(layout)));
     }
     let mut places = [None; 3];
-    let mut fixed = vec![vec![0_u64; names.len()]];
-    let mut notes = Vec::new();
-    let mut height_m = scalar(reader, variable, "height").or_else(|| super::roles::height_in_name_m(variable));
+    if let Some(pressure) = scalar(reader, variable, "air_pressure") {
+        return Err(refuse(format!("it is at an air pressure of {pressure}; expected a wind near the surface")));
+    }
+    let height_m = scalar(reader, variable, "height").or_else(|| super::roles::height_in_name_m(variable));
+    let mut rest = Rest { fixed: vec![vec![0_u64; names.len()]], height_m, notes: Vec::new() };
     for (place, name) in names.iter().enumerate() {
         let axis = axis_of(header, name, options);
         let wanted = match axis {
@@ -130,6 +131,45 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             places[wanted] = Some(place);
             continue;
         }
+        rest.take(reader, variable, options, (place, axis))?;
+    }
+    let Rest { fixed, height_m, notes } = rest;
+    if let (Some(wanted_m), Some(found_m)) = (options.height_m, height_m)
+        && (wanted_m - found_m).abs() > 1e-6
+    {
+        return Err(refuse(format!("it is at {found_m} m, but `wind.height_m` asks for {wanted_m} m")));
+    }
+    let [step, row, column] = places;
+    let time = step.map(|place| names[place].to_owned());
+    let grid = grid(reader, variable, &names, row, column, options)?;
+    Ok(Placement { step, row, column, fixed, time, grid, height_m, notes })
+}
+
+/// What is fixed of a field's further dimensions, as they are gone through.
+struct Rest {
+    fixed: Vec<Vec<u64>>,
+    height_m: Option<f64>,
+    notes: Vec<String>,
+}
+
+impl Rest {
+    /// Takes a dimension that is neither time, latitude nor longitude: of length one, or one of its values is chosen.
+    fn take(
+        &mut self,
+        reader: &Reader,
+        variable: &Variable,
+        options: &WindOptions,
+        (place, axis): (usize, Axes),
+    ) -> Result<(), NetcdfError> {
+        let header = &reader.header;
+        let refuse = |problem: String| NetcdfError::Variable {
+            path: header.path.clone(),
+            variable: variable.name.clone(),
+            problem,
+        };
+        let (names, shape) = (header.dimension_names(variable), header.shape(variable));
+        let name = names[place];
+        let Self { fixed, height_m, notes } = self;
         let values = || -> Result<Vec<f64>, NetcdfError> {
             match header.variable(name) {
                 Some(coordinate) if coordinate.number_type().is_some() => reader.coordinate(coordinate),
@@ -137,7 +177,7 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             }
         };
         let mut choose = |chosen: Vec<u64>| {
-            fixed = chosen
+            *fixed = chosen
                 .iter()
                 .flat_map(|index| {
                     fixed.iter().map(|indices| {
@@ -150,7 +190,10 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
         };
         match (axis, shape[place]) {
             (Axes::Height, 1) => {
-                height_m = values()?.first().copied().filter(|_| header.variable(name).is_some()).or(height_m);
+                if header.variable(name).is_some() {
+                    let scale_m = length_unit_m(header, name).map_err(refuse)?;
+                    *height_m = values()?.first().map(|height| height * scale_m).or(*height_m);
+                }
             }
             (Axes::Lead, 1) => {
                 let lead = values()?.first().copied().filter(|_| header.variable(name).is_some()).unwrap_or(0.0);
@@ -163,14 +206,15 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             }
             (_, 1) => {}
             (Axes::Height, _) => {
-                let heights = values()?;
+                let scale_m = length_unit_m(header, name).map_err(refuse)?;
+                let heights: Vec<f64> = values()?.iter().map(|height| height * scale_m).collect();
                 let wanted_m = options.height_m.unwrap_or(10.0);
                 let Some(index) = heights.iter().position(|height| (height - wanted_m).abs() < 1e-6) else {
                     return Err(refuse(format!(
                         "it has the heights {heights:?} m, none of them {wanted_m} m (set `wind.height_m`)"
                     )));
                 };
-                height_m = Some(wanted_m);
+                *height_m = Some(wanted_m);
                 choose(vec![index as u64]);
             }
             (Axes::Member, count) => {
@@ -207,16 +251,25 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
                 return Err(refuse(layout_problem(header, name, count)));
             }
         }
+        Ok(())
     }
-    if let (Some(wanted_m), Some(found_m)) = (options.height_m, height_m)
-        && (wanted_m - found_m).abs() > 1e-6
-    {
-        return Err(refuse(format!("it is at {found_m} m, but `wind.height_m` asks for {wanted_m} m")));
+}
+
+/// Metres a unit of a vertical coordinate.
+///
+/// # Errors
+/// A sentence, when the coordinate is no height: pressure and model levels must not pass for metres.
+fn length_unit_m(header: &Header, dimension: &str) -> Result<f64, String> {
+    let coordinate = header.variable(dimension);
+    let units = coordinate.and_then(|coordinate| coordinate.text("units"));
+    match units.map(str::to_lowercase).as_deref() {
+        Some("m" | "metre" | "metres" | "meter" | "meters") => Ok(1.0),
+        Some("km" | "kilometre" | "kilometres" | "kilometer" | "kilometers") => Ok(1000.0),
+        found => Err(format!(
+            "its dimension `{dimension}` is a vertical axis in {}; expected heights in metres (select the 10 m wind first, or name another variable)",
+            found.map_or_else(|| "no stated unit".to_owned(), |unit| format!("`{unit}`"))
+        )),
     }
-    let [step, row, column] = places;
-    let time = step.map(|place| names[place].to_owned());
-    let grid = grid(reader, variable, &names, row, column, options)?;
-    Ok(Placement { step, row, column, fixed, time, grid, height_m, notes })
 }
 
 /// Why a field with a further dimension cannot be sampled.
@@ -286,6 +339,7 @@ fn scalar(reader: &Reader, variable: &Variable, standard_name: &str) -> Option<f
         let count: u64 = reader.header.shape(coordinate).iter().product();
         (coordinate.text("standard_name") == Some(standard_name) && count == 1)
             .then(|| reader.coordinate(coordinate).ok()?.first().copied())?
+            .map(|value| if coordinate.text("units") == Some("km") { value * 1000.0 } else { value })
     })
 }
 

@@ -3,18 +3,22 @@
 //! Headers are read once; after that values come by positioned reads in any thread, outside the libraries' lock.
 
 mod calendar;
+mod chunks;
 mod classic;
 mod error;
 mod hdf5;
 mod header;
 mod layout;
+mod library;
 mod packing;
 mod read;
 mod roles;
 mod sniff;
 mod time_axis;
 mod wind;
+mod wind_merge;
 mod wind_options;
+mod wind_part;
 
 pub use error::NetcdfError;
 pub use wind::{WindKind, WindSource, open_wind};

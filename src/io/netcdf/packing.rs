@@ -47,7 +47,7 @@ impl Packing {
             match variable.attribute(name) {
                 None => {}
                 Some(AttributeValue::Numbers(values, _)) => {
-                    missing.extend(values.iter().map(|v| turned(cast(*v, number))))
+                    missing.extend(values.iter().map(|v| turned(cast(*v, number))));
                 }
                 Some(AttributeValue::Text(text)) => {
                     for part in
@@ -92,8 +92,8 @@ impl Packing {
     }
 
     /// Limits outside which raw numbers are missing. They are stated in packed units, unless their type is that of the
-    /// unpacked values (NUG, attribute conventions: "if valid_range is the same type as scale_factor and this is wider than
-    /// the external data").
+    /// unpacked values (NUG, attribute conventions: where `valid_range` has the type of `scale_factor` and
+    /// this is wider than the packed type).
     fn take_ranges(&mut self, variable: &Variable, number: NumberType) {
         let is_packed = number.is_integer() && (self.resolution() > 0.0 || self.offset != 0.0);
         for name in ["valid_range", "valid_min", "valid_max"] {

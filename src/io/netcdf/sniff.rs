@@ -21,6 +21,10 @@ pub(super) fn sniff(path: &Path) -> Result<Format, NetcdfError> {
     if path.is_dir() {
         return not("a folder");
     }
+    // A pipe or device would be waited for, perhaps for ever.
+    if std::fs::metadata(path).is_ok_and(|metadata| !metadata.is_file()) {
+        return not("no regular file");
+    }
     let mut head = Vec::new();
     File::open(path).map_err(unreadable)?.take(4096).read_to_end(&mut head).map_err(unreadable)?;
     let text = String::from_utf8_lossy(&head[..head.len().min(512)]).trim_start().to_lowercase();

@@ -2,27 +2,21 @@
 
 use super::error::NetcdfError;
 use super::header::{Header, Storage, Variable};
-use super::layout::{Placement, placement};
-use super::packing::Packing;
 use super::read::{Reader, Wanted};
 use super::roles::{DIRECTION, EASTWARD, NORTHWARD, Role, SPEED, candidates};
 use super::sniff::{Format, sniff};
-use super::time_axis;
-use super::wind_options::{DirectionSense, WindOptions, speed_unit_m_s};
+use super::wind_merge::{grid_words, merge, same_grid, usual_step_ms};
+use super::wind_options::WindOptions;
+use super::wind_part::{Part, part};
 use super::{classic, hdf5};
-use crate::model::{Block, FieldMeta, FieldSource, Flag, FlagSet, Grid, Layout, NodeId, NodeRequest, Slab, SourceId};
+use crate::model::{Block, FieldMeta, FieldSource, FlagSet, Layout, NodeId, NodeRequest, Slab, SourceId};
 use crate::units::Instant;
-use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 
 /// A gap of this many usual steps is bridged where the study does not say otherwise.
 const BRIDGED_STEPS: i64 = 2;
 /// Steps of unchunked storage that are read together.
 const UNCHUNKED_STEPS: u64 = 256;
-/// Coordinates of two files are the same up to this many degrees (float32 against float64).
-const SAME_PLACE_DEG: f64 = 1e-4;
-/// A valid range that leaves less than this of the winds is worth a remark, m/s.
-const NARROWEST_RANGE_M_S: f64 = 5.0;
 
 /// What a source's numbers are.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -37,21 +31,6 @@ pub enum WindKind {
 
 /// A component's variable in each file that has it: the file's place and the variable.
 type InFiles<'a> = Vec<(usize, &'a Variable)>;
-
-/// One variable of one file: a run of steps of one component.
-#[derive(Debug)]
-struct Part {
-    reader: usize,
-    variable: String,
-    component: usize,
-    placement: Placement,
-    packing: Packing,
-    /// For each stored step its place among the source's steps.
-    merged: Vec<Option<usize>>,
-    to_unit: f64,
-    /// Stored steps that the archive may still replace; empty where none is known.
-    preliminary: Vec<bool>,
-}
 
 /// Gridded wind, opened.
 #[derive(Debug)]
@@ -205,214 +184,6 @@ fn component_name(kind: WindKind, component: usize) -> &'static str {
         (_, 0) => "wind speed",
         (_, _) => "wind direction",
     }
-}
-
-fn part(
-    readers: &[Reader],
-    index: usize,
-    variable: &Variable,
-    component: usize,
-    kind: WindKind,
-    options: &WindOptions,
-    notes: &mut Vec<String>,
-    flags: &mut FlagSet,
-) -> Result<(Part, Vec<Option<Instant>>), NetcdfError> {
-    let reader = &readers[index];
-    let refuse = |problem: String| NetcdfError::Variable {
-        path: reader.header.path.clone(),
-        variable: variable.name.clone(),
-        problem,
-    };
-    let is_direction = kind == WindKind::SpeedAndDirection && component == 1;
-    let units = options.units.as_deref().filter(|_| !is_direction).or_else(|| variable.text("units"));
-    let to_unit = match (is_direction, units) {
-        (false, Some(text)) => speed_unit_m_s(text).ok_or_else(|| {
-            refuse(format!(
-                "it is in `{text}`; expected a speed such as m s-1, knots or km/h (set `wind.units` to override)"
-            ))
-        })?,
-        (false, None) => {
-            return Err(refuse("it has no units; expected a speed such as m s-1 (set `wind.units`)".to_owned()));
-        }
-        (true, text) => direction_to_from_degrees(variable, text, options).map_err(refuse)?,
-    };
-    let placement = placement(reader, variable, options)?;
-    notes.extend(placement.notes.iter().cloned());
-    let packing = Packing::of(&reader.header, variable)?;
-    notes.extend(packing.notes.iter().cloned());
-    if variable.text("cell_methods").is_some_and(|methods| methods.contains("time: mean")) {
-        flags.insert(Flag::AveragedField);
-        notes.push(format!(
-            "variable `{}` holds means over time (cell_methods), not values at an instant",
-            variable.name
-        ));
-    }
-    if matches!(variable.text("standard_name"), Some("x_wind" | "y_wind")) {
-        notes.push(format!(
-            "variable `{}` is along the grid's axes; on axes of latitude and longitude that is east and north",
-            variable.name
-        ));
-    }
-    if let (Some((low, high)), false) = (packing.valid_span(), is_direction)
-        && (high - low) * to_unit < NARROWEST_RANGE_M_S
-    {
-        notes.push(format!(
-            "variable `{}`: its valid range, in packed units, leaves only winds from {low} to {high}; all others are missing (a range meant in unpacked units?)",
-            variable.name
-        ));
-    }
-    let preliminary;
-    let steps = match (&placement.time, placement.step) {
-        (Some(name), Some(place)) => {
-            let name = options.time.clone().unwrap_or_else(|| name.clone());
-            let time = reader
-                .header
-                .variable(&name)
-                .filter(|time| time.number_type().is_some())
-                .ok_or_else(|| refuse(format!("there is no time variable `{name}` for it (set `wind.time`)")))?;
-            if time.dimensions.len() > 1 {
-                return Err(refuse(format!(
-                    "its time `{name}` has several dimensions (a forecast with lead times?); choose one lead time first"
-                )));
-            }
-            if time.text("standard_name") == Some("forecast_reference_time") && options.time.is_none() {
-                return Err(refuse(format!(
-                    "its time `{name}` is when forecasts start, not when they are valid (set `wind.time` to the variable of valid times)"
-                )));
-            }
-            if reader.header.shape(time).first() == Some(&0) {
-                return Err(refuse(format!("it has no step: its time `{name}` has length zero")));
-            }
-            preliminary = preliminary_steps(reader, variable, place);
-            let axis = time_axis::decode(reader, time, options.time_units.as_deref(), options.calendar.as_deref())?;
-            notes.extend(axis.notes);
-            let count = reader.header.shape(variable)[place] as usize;
-            if axis.steps.len() != count {
-                return Err(refuse(format!("it has {count} steps, but its time `{name}` has {}", axis.steps.len())));
-            }
-            axis.steps
-        }
-        _ => return Err(refuse("it has no dimension of time (set `wind.time`)".to_owned())),
-    };
-    let part = Part {
-        reader: index,
-        variable: variable.name.clone(),
-        component,
-        placement,
-        packing,
-        merged: Vec::new(),
-        to_unit,
-        preliminary,
-    };
-    Ok((part, steps))
-}
-
-/// Which stored steps are preliminary: archives write the version of each step along the time, 1 for final data and 5 for
-/// preliminary ("0001", "0005" as texts).
-fn preliminary_steps(reader: &Reader, variable: &Variable, step: usize) -> Vec<bool> {
-    let along = [variable.dimensions[step]];
-    let Some(version) = reader.header.variable("expver").filter(|version| version.dimensions == along) else {
-        return Vec::new();
-    };
-    let is_preliminary: Vec<bool> = if version.number_type().is_some() {
-        reader.coordinate(version).unwrap_or_default().iter().map(|version| (version - 5.0).abs() < 0.5).collect()
-    } else {
-        reader.texts(version).iter().map(|version| version.trim().parse() == Ok(5)).collect()
-    };
-    if is_preliminary.contains(&true) { is_preliminary } else { Vec::new() }
-}
-
-/// A grid in words.
-fn grid_words(grid: &Grid) -> String {
-    let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
-    format!(
-        "{} x {} nodes from {south} to {north} degrees north and {west} to {east} degrees east",
-        grid.latitude.len(),
-        grid.longitude.len()
-    )
-}
-
-/// What turns a direction's numbers into degrees, with its sense in the sign: positive for coming-from, negative for going-to.
-fn direction_to_from_degrees(variable: &Variable, units: Option<&str>, options: &WindOptions) -> Result<f64, String> {
-    let degrees = match units.map(str::to_lowercase).as_deref() {
-        Some("degree" | "degrees" | "deg" | "degree_true" | "degrees_true" | "degt" | "°") => 1.0,
-        Some("radian" | "radians" | "rad") => 180.0 / std::f64::consts::PI,
-        Some(other) => return Err(format!("its units are `{other}`; expected degrees or radians")),
-        None => return Err("it has no units; expected degrees or radians".to_owned()),
-    };
-    let standard = variable.text("standard_name").unwrap_or_default();
-    let long = variable.text("long_name").unwrap_or_default().to_lowercase();
-    let sense = options.direction_sense.or(match standard {
-        "wind_from_direction" => Some(DirectionSense::From),
-        "wind_to_direction" => Some(DirectionSense::To),
-        _ if long.contains("from") => Some(DirectionSense::From),
-        _ if long.contains(" to ") || long.contains("toward") => Some(DirectionSense::To),
-        _ => None,
-    });
-    match sense {
-        Some(DirectionSense::From) => Ok(degrees),
-        Some(DirectionSense::To) => Ok(-degrees),
-        None => Err("nothing says whether it is where the wind comes from or goes to (set `wind.direction_sense` to \"from\" or \"to\")".to_owned()),
-    }
-}
-
-/// Brings the steps of all parts on one time line: the steps at which every component is there.
-fn merge(
-    readers: &[Reader],
-    parts: Vec<(Part, Vec<Option<Instant>>)>,
-    components: usize,
-    notes: &mut Vec<String>,
-) -> (Vec<Part>, Vec<Instant>) {
-    let mut seen: BTreeMap<Instant, Vec<usize>> = BTreeMap::new();
-    let mut unsorted = Vec::new();
-    for (part, steps) in &parts {
-        let known: Vec<Instant> = steps.iter().filter_map(|step| *step).collect();
-        if known.windows(2).any(|pair| pair[1] < pair[0]) {
-            unsorted.push(readers[part.reader].header.path.display().to_string());
-        }
-        for step in known {
-            let counts = seen.entry(step).or_insert_with(|| vec![0; components]);
-            counts[part.component] += 1;
-        }
-    }
-    unsorted.dedup();
-    for path in unsorted {
-        notes.push(format!("{path}: steps are not in order of time; they were sorted"));
-    }
-    let twice = seen.values().filter(|counts| counts.iter().any(|count| *count > 1)).count();
-    if twice > 0 {
-        notes.push(format!("{twice} steps are there more than once; the first counts, and differences are refused"));
-    }
-    let partial = seen.values().filter(|counts| counts.contains(&0)).count();
-    if partial > 0 {
-        notes.push(format!("{partial} steps lack one of the components and are left out"));
-    }
-    let steps: Vec<Instant> = seen.iter().filter(|(_, counts)| !counts.contains(&0)).map(|(step, _)| *step).collect();
-    let parts = parts
-        .into_iter()
-        .map(|(mut part, of_part)| {
-            part.merged = of_part.iter().map(|step| steps.binary_search(&(*step)?).ok()).collect();
-            part
-        })
-        .collect();
-    (parts, steps)
-}
-
-fn same_grid(a: &Grid, b: &Grid) -> bool {
-    let same = |a: &crate::numerics::axis::Axis, b: &crate::numerics::axis::Axis| {
-        // Stored the same way round as well: a node goes by its stored row and column.
-        a.len() == b.len() && a.nodes().zip(b.nodes()).all(|(a, b)| a.0 == b.0 && (a.1 - b.1).abs() < SAME_PLACE_DEG)
-    };
-    same(&a.latitude, &b.latitude) && same(&a.longitude, &b.longitude)
-}
-
-/// The most common time between steps, ms.
-fn usual_step_ms(steps: &[Instant]) -> i64 {
-    let mut counts: BTreeMap<i64, usize> = BTreeMap::new();
-    for pair in steps.windows(2) {
-        *counts.entry(pair[1].0 - pair[0].0).or_default() += 1;
-    }
-    counts.iter().max_by_key(|(step, count)| (**count, -**step)).map_or(0, |(step, _)| *step)
 }
 
 impl WindSource {

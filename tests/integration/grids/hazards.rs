@@ -1,7 +1,7 @@
 //! Files that each do one thing that real files do: the right number, a number with its flag, or an explained null.
 //!
-//! The files and what a right reader answers are made by tests/fixtures/grids/make_grids.py (numpy's `interp` with its
-//! period for values, cftime for times; versions in hazards.json).
+//! The files and what a right reader answers are made by `tests/fixtures/grids/make_grids.py` (numpy's `interp` with its
+//! period for values, cftime for times; versions in `hazards.json`).
 
 use super::support::{ask_by, expected, fixture, open, steps};
 use std::path::PathBuf;
@@ -93,7 +93,7 @@ fn what_a_reader_should_know_is_said() {
         (&["t09_hole.nc"], "1 steps of time variable `time` have no time and are left out"),
         (&["t09_short_axis.nc"], "2 steps of time variable `time` have no time and are left out"),
         (&["t10_a.nc", "t10_a.nc"], "4 steps are there more than once; the first counts, and differences are refused"),
-        (&["t11_mean.nc"], "variable `u10` holds means over time (cell_methods), not values at an instant"),
+        (&["t11_mean.nc"], "variable `u10` holds the mean over time (cell_methods), not values at an instant"),
         (&["d02_split.nc"], "variable `u10`: final values go before preliminary ones along `expver`"),
         (&["g11_text_missing.nc"], "variable `u10`: `missing_value` is a text, read as -9999"),
         (

@@ -113,8 +113,9 @@ fn a_moving_site_is_at_its_place_at_every_step() {
     let track = Track::Moving(vec![(first, from), (last, to)]);
     let moving = Site { id: "M".into(), track: track.clone(), sensors: Vec::new() };
     for window in [None, Some(Window { start: steps[5].plus_ms(60_000), end: steps[9] })] {
-        let found =
-            sample_wind(&source, &[moving.clone()], window, &SpatialRule::default(), &Silent).unwrap().remove(0);
+        let found = sample_wind(&source, std::slice::from_ref(&moving), window, &SpatialRule::default(), &Silent)
+            .unwrap()
+            .remove(0);
         for (k, step) in found.steps.iter().enumerate() {
             match track.at(*step) {
                 Some(place) => {
