@@ -5,9 +5,11 @@ use crate::support::{project, underwind, write};
 use std::collections::BTreeMap;
 use std::path::Path;
 
+/// The files of a folder; not what lies in folders below, such as the demo's own results.
 fn files(folder: &Path) -> BTreeMap<String, Vec<u8>> {
     let entries = std::fs::read_dir(folder).unwrap().map(|entry| entry.unwrap());
     entries
+        .filter(|entry| entry.file_type().unwrap().is_file())
         .map(|entry| (entry.file_name().to_string_lossy().into_owned(), std::fs::read(entry.path()).unwrap()))
         .collect()
 }
