@@ -43,7 +43,10 @@ pub struct Outcome {
 /// When an input cannot be used, when the inputs have nothing in common, or when an output cannot be written.
 pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outcome, Error> {
     let inputs = open_inputs(study)?;
-    let matched = bring_together(study, &inputs, progress)?;
+    // Checksums keep one core busy while the level tables, which are read in order, keep another.
+    let files = inputs.files(study);
+    let (matched, records) = rayon::join(|| bring_together(study, &inputs, progress), || input_records(study, &files));
+    let (matched, records) = (matched?, records?);
     // Made before the work that takes long, so that a folder that cannot be written is known at once.
     make_folder(&study.output)?;
     let mut written = Vec::new();
@@ -54,7 +57,6 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     if matches!(stage, Stage::Fit | Stage::Everything) {
         written.extend(write_relations(&fitted, &study.tables, &study.output)?);
     }
-    let records = input_records(study, &inputs.files(study))?;
     if matches!(stage, Stage::Report | Stage::Everything) {
         let input = ReportInput { study, sites: &inputs.sites, matched: &matched, fitted: &fitted, inputs: &records };
         written.extend(write_report(&input, &study.output, progress)?);
