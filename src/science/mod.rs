@@ -4,3 +4,4 @@ pub mod level_wind;
 pub mod matchup;
 pub mod sample;
 pub mod simulate;
+pub mod waves;

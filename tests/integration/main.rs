@@ -11,3 +11,4 @@ mod simulate;
 mod study_file;
 mod support;
 mod tables;
+mod waves;

@@ -1,0 +1,21 @@
+//! Surface waves and the sound of opposing waves.
+
+mod blend;
+mod moments;
+mod opposing;
+mod radiated;
+mod reduce;
+mod spreading_law;
+mod tail;
+mod water;
+mod wind_sea;
+
+pub use blend::*;
+pub use moments::*;
+pub use opposing::Opposing;
+pub use radiated::*;
+pub use reduce::*;
+pub use spreading_law::*;
+pub use tail::*;
+pub use water::*;
+pub use wind_sea::*;
