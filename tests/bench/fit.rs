@@ -1,10 +1,12 @@
 //! How long a fit of many bands takes, and the long simulation study.
 //!
 //! `cargo bench --bench fit` times 30 bands of 20,000 hourly samples with 1000 replicates, and 20 sites of 30 bands of 8,760
-//! samples with 1000 replicates. `cargo bench --bench fit -- study RUNS SAMPLES [CASE...]` runs the simulation study: seeds
-//! 1, 2, ... RUNS of every case, 400 replicates. It prints verdict shares, bias, root mean square error, coverage, and the median
-//! interval width over 3.92 standard deviations of the estimates (the width that one who knew the distribution of the
-//! estimate would use).
+//! samples with 1000 replicates.
+//!
+//! `cargo bench --bench fit -- study RUNS SAMPLES [FIRST_SEED [CASE...]]` runs the simulation study: RUNS seeds of every
+//! case from the first on (1001 where none is given), 400 replicates. It prints verdict shares, bias, root mean square
+//! error, coverage, and the median interval width over 3.92 standard deviations of the estimates (the width that one who
+//! knew the distribution of the estimate would use). `STUDY.md` keeps what it printed.
 
 #![expect(clippy::unwrap_used, clippy::print_stdout, reason = "a program for developers")]
 

@@ -6,6 +6,9 @@ use std::time::Instant;
 use underwind::model::{Relation, Resolved, Verdict};
 use underwind::science::level_wind::{Options, fit_band};
 
+/// The rules were chosen on seeds 1 to 400; the study is judged on others.
+const FRESH_SEED: u64 = 1001;
+
 /// Names and truths.
 fn cases() -> Vec<(&'static str, Truth)> {
     let base = Truth::default();
@@ -82,11 +85,12 @@ fn triple(value: Resolved) -> Option<(f64, f64, f64)> {
     Some((value.estimate()?, low, high))
 }
 
-/// Arguments: number of runs, samples, names of cases (all when none is given).
+/// Arguments: number of runs, samples, first seed, names of cases (all when none is given).
 pub(crate) fn run(arguments: &[String]) {
     let runs: u64 = arguments.first().map_or(400, |text| text.parse().unwrap());
     let samples: usize = arguments.get(1).map_or(2000, |text| text.parse().unwrap());
-    let names = arguments.get(2..).unwrap_or_default();
+    let first_seed: u64 = arguments.get(2).map_or(FRESH_SEED, |text| text.parse().unwrap());
+    let names = arguments.get(3..).unwrap_or_default();
     println!(
         "case N (runs): families T/G/S %, verdicts %, slope, floor, named onset: bias/rmse coverage width runs; bound held"
     );
@@ -96,7 +100,7 @@ pub(crate) fn run(arguments: &[String]) {
         }
         let start = Instant::now();
         let options = Options { replicates: 400, ..Options::default() };
-        let relations: Vec<Relation> = (1..=runs)
+        let relations: Vec<Relation> = (first_seed..first_seed + runs)
             .into_par_iter()
             .map(|seed| {
                 let simulated = record(truth, samples, seed);
