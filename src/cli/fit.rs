@@ -9,7 +9,7 @@ use crate::config::{TableFormat, check_replicates, read_study};
 use crate::io::delimited::TextOptions;
 use crate::io::table::{PairColumns, PairOptions, read_pairs};
 use crate::io::time_text::TimeUnit;
-use crate::pipeline;
+use crate::pipeline::{self, Stage};
 use crate::report::relation_text;
 use crate::science::level_wind::{Loss, Options};
 
@@ -20,7 +20,8 @@ pub(super) fn fit(args: &FitArgs, terminal: &Terminal) -> Result<(), Ending> {
         if let Some(output) = &args.output {
             study.output.clone_from(output);
         }
-        return fit_study(&study, args.json, terminal);
+        let stage = if args.sensitivity { Stage::Sensitivity } else { Stage::Fit };
+        return fit_study(&study, stage, args.json, terminal);
     }
     let Some(table) = &args.matchups else { return Ok(()) };
     let mut options = Options::default();

@@ -5,7 +5,7 @@ use super::args::{RunArgs, SimulateArgs, StudyArgs};
 use super::terminal::{Terminal, print};
 use crate::config::{Study, read_study};
 use crate::pipeline::{self, Outcome, Stage};
-use crate::report::relation_text;
+use crate::report::{relation_text, sensitivity_text};
 
 /// The study that a command names, with its output folder from the command line where given.
 fn study(args: &StudyArgs) -> Result<Study, Ending> {
@@ -43,13 +43,17 @@ pub(super) fn run(args: &RunArgs, terminal: &Terminal) -> Result<(), Ending> {
 }
 
 /// `fit` with a study file.
-pub(super) fn fit_study(study: &Study, json: bool, terminal: &Terminal) -> Result<(), Ending> {
-    let outcome = pipeline::run(study, Stage::Fit, terminal)?;
+pub(super) fn fit_study(study: &Study, stage: Stage, json: bool, terminal: &Terminal) -> Result<(), Ending> {
+    let outcome = pipeline::run(study, stage, terminal)?;
     remarks(&outcome, terminal);
     let text = if json {
         pipeline::relations_json(&outcome.fitted)
     } else {
-        format!("{}\n{}", relation_text(&outcome.fitted), files(study, &outcome))
+        let mut text = relation_text(&outcome.fitted);
+        if !outcome.refits.is_empty() {
+            text.push_str(&format!("\n{}", sensitivity_text(&outcome.refits)));
+        }
+        format!("{text}\n{}", files(study, &outcome))
     };
     print(&text).map_err(Ending::Exit)
 }

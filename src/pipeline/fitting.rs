@@ -29,7 +29,7 @@ pub fn fit_matched(study: &Study, matched: &Matched, progress: &dyn Progress) ->
     for wind in &study.wind {
         for (record, sources) in matched.records.iter().zip(&matched.conditions) {
             if let Some(conditions) = sources.iter().find(|conditions| conditions.source == wind.id) {
-                fitted.extend(fit_record(study, record, conditions));
+                fitted.extend(fit_conditions(study, record, conditions, 0));
                 progress.advance(1);
             }
         }
@@ -38,10 +38,18 @@ pub fn fit_matched(study: &Study, matched: &Matched, progress: &dyn Progress) ->
     fitted
 }
 
-fn fit_record(study: &Study, record: &SensorRecord, conditions: &Conditions) -> Vec<FittedBand> {
+/// Fits the bands of one sensor against one wind source; the level of a window goes with the wind this many windows before it
+/// (after it where negative).
+pub(super) fn fit_conditions(
+    study: &Study,
+    record: &SensorRecord,
+    conditions: &Conditions,
+    lag_windows: i32,
+) -> Vec<FittedBand> {
     let times_ms: Vec<i64> = record.windows.iter().map(|window| window.centre().0).collect();
     let wind: Vec<f64> =
         conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), study.matching.wind_speed)).collect();
+    let wind = if lag_windows == 0 { wind } else { lagged(&times_ms, &wind, lag_windows) };
     let levels = used_levels_db(record, conditions);
     let deployment = deployment_labels(record);
     let site = SiteRecord {
@@ -62,6 +70,15 @@ fn fit_record(study: &Study, record: &SensorRecord, conditions: &Conditions) -> 
             relation,
         })
         .collect()
+}
+
+/// The values of windows that lie a number of usual steps earlier (later where negative); NaN where there is none.
+fn lagged(times_ms: &[i64], values: &[f64], steps: i32) -> Vec<f64> {
+    let mut gaps_ms: Vec<i64> = times_ms.windows(2).map(|pair| pair[1] - pair[0]).collect();
+    gaps_ms.sort_unstable();
+    let Some(step_ms) = gaps_ms.get(gaps_ms.len() / 2) else { return vec![f64::NAN; values.len()] };
+    let earlier = |time: &i64| times_ms.binary_search(&(time - i64::from(steps) * step_ms)).ok();
+    times_ms.iter().map(|time| earlier(time).map_or(f64::NAN, |at| values[at])).collect()
 }
 
 /// Fits a table of pairs of wind and level: each source, site and sensor by itself, its bands together; rows marked as not

@@ -339,14 +339,14 @@ pub fn write_tables(
 }
 
 /// One table in all the formats that the study asks for.
-struct Output {
+pub(super) struct Output {
     writers: Vec<(PathBuf, TableWriter)>,
     dictionary: PathBuf,
     columns: Option<Table>,
 }
 
 impl Output {
-    fn create(study: &Study, folder: &Path, name: &str) -> Result<Self, Error> {
+    pub(super) fn create(study: &Study, folder: &Path, name: &str) -> Result<Self, Error> {
         let mut writers = Vec::new();
         for format in &study.tables {
             let extension = match format {
@@ -360,7 +360,7 @@ impl Output {
         Ok(Self { writers, dictionary: folder.join(format!("{name}_columns.csv")), columns: None })
     }
 
-    fn append(&mut self, table: &Table) -> Result<(), Error> {
+    pub(super) fn append(&mut self, table: &Table) -> Result<(), Error> {
         for (_, writer) in &mut self.writers {
             writer.append(table)?;
         }
@@ -370,7 +370,7 @@ impl Output {
         Ok(())
     }
 
-    fn finish(self) -> Result<Vec<PathBuf>, Error> {
+    pub(super) fn finish(self) -> Result<Vec<PathBuf>, Error> {
         let mut written = Vec::new();
         for (path, writer) in self.writers {
             writer.finish()?;

@@ -10,6 +10,7 @@ mod provenance;
 mod reporting;
 mod run;
 mod sampling;
+mod sensitivity;
 mod simulate;
 
 pub use check::{CheckReport, check_study};

@@ -6,9 +6,10 @@ use super::matching::{Counts, bring_together, write_tables};
 use super::progress::Progress;
 use super::provenance::{PROGRAM, Provenance, input_records, write_provenance};
 use super::reporting::{ReportInput, write_report};
+use super::sensitivity::{refit_all, write_sensitivity};
 use crate::Error;
 use crate::config::Study;
-use crate::model::FittedBand;
+use crate::model::{FittedBand, Refit};
 use std::path::{Path, PathBuf};
 
 /// What is written.
@@ -18,6 +19,8 @@ pub enum Stage {
     Match,
     /// The relation table.
     Fit,
+    /// The relation table, and what other choices would do to it.
+    Sensitivity,
     /// Figures and page.
     Report,
     /// All of these.
@@ -33,6 +36,8 @@ pub struct Outcome {
     pub counts: Counts,
     /// Remarks.
     pub remarks: Vec<String>,
+    /// Fits under other choices; empty unless asked for.
+    pub refits: Vec<Refit>,
     /// Files written.
     pub written: Vec<PathBuf>,
 }
@@ -46,7 +51,7 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     // Checksums keep one core busy while the level tables, which are read in order, keep another.
     let files = inputs.files(study);
     let (matched, records) = rayon::join(|| bring_together(study, &inputs, progress), || input_records(study, &files));
-    let (matched, records) = (matched?, records?);
+    let (mut matched, records) = (matched?, records?);
     // Made before the work that takes long, so that a folder that cannot be written is known at once.
     make_folder(&study.output)?;
     let mut written = Vec::new();
@@ -54,8 +59,15 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
         written.extend(write_tables(study, &matched, &study.output, progress)?);
     }
     let fitted = if stage == Stage::Match { Vec::new() } else { fit_matched(study, &matched, progress) };
-    if matches!(stage, Stage::Fit | Stage::Everything) {
+    if matches!(stage, Stage::Fit | Stage::Sensitivity | Stage::Everything) {
         written.extend(write_relations(&fitted, &study.tables, &study.output)?);
+    }
+    let mut refits = Vec::new();
+    if stage == Stage::Sensitivity {
+        let (all, remarks) = refit_all(study, &inputs, &matched, &fitted, progress)?;
+        written.extend(write_sensitivity(study, &all, &study.output)?);
+        matched.remarks.extend(remarks);
+        refits = all;
     }
     if matches!(stage, Stage::Report | Stage::Everything) {
         let input = ReportInput { study, sites: &inputs.sites, matched: &matched, fitted: &fitted, inputs: &records };
@@ -73,7 +85,7 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     };
     write_provenance(&provenance, &path)?;
     written.push(path);
-    Ok(Outcome { fitted, counts: matched.counts, remarks: matched.remarks, written })
+    Ok(Outcome { fitted, counts: matched.counts, remarks: matched.remarks, refits, written })
 }
 
 /// Makes a folder for outputs, with all above it.

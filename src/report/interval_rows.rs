@@ -37,6 +37,8 @@ pub struct IntervalRows {
     pub title: String,
     /// Sentences under the title.
     pub notes: Vec<String>,
+    /// What a mark with its bar is called in the key, such as `value with interval`.
+    pub mark_name: String,
     /// What the shaded interval is called in the key, such as `result of the study and its interval`.
     pub base_name: String,
     /// The quantities, side by side.
@@ -139,7 +141,7 @@ fn key(input: &IntervalRows) -> Vec<(Sample, String)> {
         entries.push((Sample::Mark(Shape::Diamond, series(1), true), "as chosen in the study".to_owned()));
     }
     if input.rows.iter().any(|r| !r.chosen) {
-        entries.push((Sample::Mark(Shape::Circle, series(0), true), "value with interval".to_owned()));
+        entries.push((Sample::Mark(Shape::Circle, series(0), true), input.mark_name.clone()));
     }
     let all = || input.rows.iter().flat_map(|r| &r.values);
     if all().any(|e| matches!(e, Estimate::Above(_) | Estimate::Below(_))) {
@@ -174,6 +176,7 @@ mod tests {
         let mut input = IntervalRows {
             title: "Choices".to_owned(),
             notes: Vec::new(),
+            mark_name: "value with interval".to_owned(),
             base_name: "result of the study".to_owned(),
             columns: vec![
                 column(

@@ -7,6 +7,7 @@ mod estimator;
 mod grids;
 mod layering;
 mod real_data;
+mod sensitivity;
 mod simulate;
 mod study_file;
 mod support;

@@ -43,6 +43,10 @@ pub(crate) struct FitArgs {
     /// With --matchups: encoding of a text table
     #[arg(long, value_name = "NAME", requires = "matchups")]
     pub(crate) encoding: Option<String>,
+    /// Fit again under every other reasonable choice, one at a time, and say which moves the result by how much: writes
+    /// the table `sensitivity` and figures
+    #[arg(long, conflicts_with = "matchups")]
+    pub(crate) sensitivity: bool,
     /// Print the results as JSON
     #[arg(long)]
     pub(crate) json: bool,

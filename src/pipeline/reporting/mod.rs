@@ -2,7 +2,7 @@
 
 mod figures;
 mod page;
-mod words;
+pub(super) mod words;
 
 use super::fitting::wind_speed_m_s;
 use super::matching::{Matched, deployment_labels, used_levels_db};
@@ -70,15 +70,12 @@ pub(super) fn write_report(
     std::fs::create_dir_all(&figure_folder).map_err(|source| Error::Folder { path: figure_folder.clone(), source })?;
     let all: Vec<&Placed> = whole.iter().chain(per_pairing.iter().flatten()).collect();
     progress.start(all.len() as u64, "drawing");
-    let written: Vec<Vec<PathBuf>> = all
+    let written: Vec<[PathBuf; 2]> = all
         .par_iter()
         .map(|placed| {
-            let svg = figure_folder.join(format!("{}.svg", placed.name));
-            replace_with(&svg, placed.figure.svg().as_bytes())?;
-            let png = figure_folder.join(format!("{}.png", placed.name));
-            replace_with(&png, &placed.figure.png(PNG_SCALE)?)?;
+            let files = write_figure(&figure_folder, &placed.name, &placed.figure)?;
             progress.advance(1);
-            Ok(vec![svg, png])
+            Ok(files)
         })
         .collect::<Result<_, Error>>()?;
     progress.finish();
@@ -88,6 +85,18 @@ pub(super) fn write_report(
     let mut files: Vec<PathBuf> = written.into_iter().flatten().collect();
     files.push(page);
     Ok(files)
+}
+
+/// Writes a figure as SVG and PNG.
+///
+/// # Errors
+/// When a file cannot be written.
+pub(super) fn write_figure(folder: &Path, name: &str, figure: &Figure) -> Result<[PathBuf; 2], Error> {
+    let svg = folder.join(format!("{name}.svg"));
+    replace_with(&svg, figure.svg().as_bytes())?;
+    let png = folder.join(format!("{name}.png"));
+    replace_with(&png, &figure.png(PNG_SCALE)?)?;
+    Ok([svg, png])
 }
 
 fn pairings<'a>(input: &'a ReportInput<'a>) -> Vec<Pairing<'a>> {

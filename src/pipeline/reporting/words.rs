@@ -4,7 +4,7 @@ use crate::model::{LevelKind, Resolved, Verdict};
 use crate::report::Estimate;
 
 /// Quantity and reference of a level, as an axis says it.
-pub(super) fn level_label(kind: LevelKind) -> &'static str {
+pub(in crate::pipeline) fn level_label(kind: LevelKind) -> &'static str {
     match kind {
         LevelKind::BandLevel => "Band level (dB re 1 µPa²)",
         LevelKind::SpectralDensityLevel => "Spectral density level (dB re 1 µPa² Hz⁻¹)",
@@ -12,7 +12,7 @@ pub(super) fn level_label(kind: LevelKind) -> &'static str {
 }
 
 /// The reference alone.
-pub(super) fn reference(kind: LevelKind) -> &'static str {
+pub(in crate::pipeline) fn reference(kind: LevelKind) -> &'static str {
     match kind {
         LevelKind::BandLevel => "dB re 1 µPa²",
         LevelKind::SpectralDensityLevel => "dB re 1 µPa² Hz⁻¹",
@@ -20,7 +20,7 @@ pub(super) fn reference(kind: LevelKind) -> &'static str {
 }
 
 /// A result as figures show it.
-pub(super) fn estimate(value: Resolved) -> Estimate {
+pub(in crate::pipeline) fn estimate(value: Resolved) -> Estimate {
     match value {
         Resolved::Value { estimate, low, high } => {
             Estimate::value(estimate, low.unwrap_or(f64::NAN), high.unwrap_or(f64::NAN))
@@ -32,7 +32,7 @@ pub(super) fn estimate(value: Resolved) -> Estimate {
 }
 
 /// An onset as figures show it: without intervals nothing is resolved.
-pub(super) fn onset(value: Resolved, verdict: Verdict) -> Estimate {
+pub(in crate::pipeline) fn onset(value: Resolved, verdict: Verdict) -> Estimate {
     match (value, verdict) {
         (Resolved::Value { estimate, .. }, Verdict::PointOnly) => {
             Estimate::Unresolved { value: estimate, low: f64::NAN, high: f64::NAN }
@@ -42,6 +42,6 @@ pub(super) fn onset(value: Resolved, verdict: Verdict) -> Estimate {
 }
 
 /// A name as part of a file name: letters, digits and dashes alone.
-pub(super) fn file_part(name: &str) -> String {
+pub(in crate::pipeline) fn file_part(name: &str) -> String {
     name.chars().map(|c| if c.is_ascii_alphanumeric() { c.to_ascii_lowercase() } else { '-' }).collect()
 }

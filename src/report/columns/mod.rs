@@ -4,8 +4,10 @@ mod conditions;
 mod matchups;
 mod relation;
 mod sampled;
+mod sensitivity;
 
 pub use conditions::conditions_table;
 pub use matchups::matchups_table;
 pub use relation::relation_table;
 pub use sampled::sampled_table;
+pub use sensitivity::sensitivity_table;
