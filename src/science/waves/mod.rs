@@ -3,19 +3,23 @@
 mod blend;
 mod moments;
 mod opposing;
+mod opposing_seas;
 mod radiated;
 mod reduce;
 mod spreading_law;
 mod tail;
+mod two_lobe;
 mod water;
 mod wind_sea;
 
 pub use blend::*;
 pub use moments::*;
 pub use opposing::Opposing;
+pub use opposing_seas::*;
 pub use radiated::*;
 pub use reduce::*;
 pub use spreading_law::*;
 pub use tail::*;
+pub use two_lobe::*;
 pub use water::*;
 pub use wind_sea::*;

@@ -34,6 +34,10 @@ pub enum Distribution {
 
 /// Density of a wrapped normal distribution at an angle, 1/rad.
 pub fn wrapped_normal_per_rad(angle_rad: f64, width_rad: f64) -> f64 {
+    // So broad that the first harmonic, 2 exp(-width^2 / 2), is below 1e-10: isotropic.
+    if width_rad > 7.0 {
+        return 1.0 / TAU;
+    }
     // On the nearest turn; further turns until they cannot matter.
     let angle = angle_rad - TAU * (angle_rad / TAU).round();
     let turns = 1 + (8.5 * width_rad / TAU).ceil() as i32;
