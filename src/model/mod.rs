@@ -13,6 +13,7 @@ mod sensitivity;
 mod series;
 mod site;
 mod spectrum;
+mod spreading;
 mod table;
 
 pub use band::*;
@@ -28,4 +29,5 @@ pub use sensitivity::*;
 pub use series::*;
 pub use site::*;
 pub use spectrum::*;
+pub use spreading::*;
 pub use table::*;

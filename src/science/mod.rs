@@ -4,4 +4,5 @@ pub mod level_wind;
 pub mod matchup;
 pub mod sample;
 pub mod simulate;
+pub mod spreading;
 pub mod waves;

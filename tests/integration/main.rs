@@ -9,6 +9,7 @@ mod layering;
 mod real_data;
 mod sensitivity;
 mod simulate;
+mod spreading;
 mod study_file;
 mod support;
 mod tables;

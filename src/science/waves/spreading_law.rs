@@ -97,6 +97,21 @@ impl Distribution {
         }
     }
 
+    /// The same shape made narrower by this factor in the inverse variance (above 1) or wider (below 1).
+    #[must_use]
+    pub fn narrowed(self, factor: f64) -> Self {
+        let root = factor.sqrt();
+        match self {
+            Self::Isotropic => Self::Isotropic,
+            Self::CosinePower { s } => Self::CosinePower { s: s * factor },
+            Self::SechSquared { beta } => Self::SechSquared { beta: beta * root },
+            Self::WrappedNormal { width_rad } => Self::WrappedNormal { width_rad: width_rad / root },
+            Self::TwoLobe { half_separation_rad, width_rad } => {
+                Self::TwoLobe { half_separation_rad: half_separation_rad / root, width_rad: width_rad / root }
+            }
+        }
+    }
+
     /// Overlap against that of the isotropic sea, dB: 10 log10(2 pi I).
     pub fn overlap_db(self) -> f64 {
         10.0 * libm::log10(TAU * self.overlap_2pi_per_rad())
