@@ -4,6 +4,7 @@
 mod law;
 mod levels;
 mod random;
+mod sea;
 mod settings;
 mod ships;
 mod site_wind;
@@ -12,6 +13,7 @@ mod wind_field;
 
 pub use law::{BandLaw, law_level_db, wind_part_db};
 pub use levels::{LevelSeries, Windows, lost_windows, simulate_levels};
+pub use sea::*;
 pub use settings::{Settings, WindOrigin};
 pub use ships::{ShipVisit, ship_excess_db, simulate_ships};
 pub use site_wind::{SiteWind, mean_speed_m_s};

@@ -1,6 +1,7 @@
 //! Directional distributions of waves about their mean direction, their overlap, and published laws for their course with
 //! frequency.
 
+use serde::{Deserialize, Serialize};
 use std::f64::consts::{PI, TAU};
 
 /// A distribution D(theta), 1/rad, theta from the mean direction; its integral over the circle is 1.
@@ -165,15 +166,19 @@ fn sech_squared_overlap(beta: f64) -> f64 {
 }
 
 /// A published law for the course of the distribution with x = f / fp of the wind sea.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
 pub enum SpreadingLaw {
     /// Mitsuyasu et al. 1975: cosine power.
+    #[serde(rename = "mitsuyasu_1975")]
     Mitsuyasu1975,
     /// Hasselmann et al. 1980: cosine power.
+    #[serde(rename = "hasselmann_1980")]
     Hasselmann1980,
     /// Donelan et al. 1985 with Banner 1990 above 1.6 fp: sech^2.
+    #[serde(rename = "donelan_1985_banner_1990")]
     DonelanBanner,
     /// Ewans 1998: two lobes.
+    #[serde(rename = "ewans_1998")]
     Ewans1998,
 }
 
