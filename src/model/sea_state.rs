@@ -63,6 +63,32 @@ pub struct SeaState {
     pub by_frequency: FrequencyStates,
 }
 
+/// One system of waves in a spectrum.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct WaveSystem {
+    /// Frequency of its highest bin, Hz.
+    pub peak_hz: f64,
+    /// Mean direction it comes from, degrees.
+    pub from_deg: f64,
+    /// Significant height, m.
+    pub hs_m: f64,
+    /// Whether it is wind sea; `None` without wind.
+    pub wind_sea: Option<bool>,
+}
+
+/// Two systems against each other at one stored step and node.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct OpposingSeas {
+    /// The two, the higher first.
+    pub systems: [WaveSystem; 2],
+    /// Frequency at which their joint overlap is strongest, Hz; the sound has twice this frequency.
+    pub frequency_hz: f64,
+    /// E^2 times overlap of the two systems there, m4/Hz2/rad.
+    pub joint_overlap: f64,
+    /// Share of it in the whole overlap at that frequency.
+    pub joint_share: f64,
+}
+
 /// Overlap of opposing waves in a spectrum that was blended from stored ones (nodes and steps) with linear weights. Each is
 /// the integral of E(t) E(t + pi) over 0 to 2 pi at one frequency, m4/Hz2/rad, so that parts add.
 ///

@@ -5,9 +5,11 @@ mod matchups;
 mod relation;
 mod sampled;
 mod sensitivity;
+mod spreading;
 
 pub use conditions::conditions_table;
 pub use matchups::matchups_table;
 pub use relation::relation_table;
 pub use sampled::sampled_table;
 pub use sensitivity::sensitivity_table;
+pub use spreading::*;

@@ -1,6 +1,7 @@
 //! Surface waves and the sound of opposing waves.
 
 mod blend;
+mod from_moments;
 mod moments;
 mod opposing;
 mod opposing_seas;
@@ -13,6 +14,7 @@ mod water;
 mod wind_sea;
 
 pub use blend::*;
+pub use from_moments::*;
 pub use moments::*;
 pub use opposing::Opposing;
 pub use opposing_seas::*;

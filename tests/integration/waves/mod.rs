@@ -2,3 +2,4 @@
 
 mod invariance;
 mod reference_rows;
+mod veering;
