@@ -5,7 +5,7 @@ use super::args::{SampleArgs, SampleKind, Spatial};
 use super::one_line;
 use super::terminal::print;
 use crate::model::{CoastRule, SpatialRule};
-use crate::pipeline::{Answer, LookUp, look_up_levels, look_up_sites, look_up_wind};
+use crate::pipeline::{Answer, LookUp, look_up_levels, look_up_sites, look_up_spectrum, look_up_wind};
 use std::process::ExitCode;
 
 pub(super) fn sample(args: &SampleArgs) -> Result<(), Ending> {
@@ -24,6 +24,7 @@ pub(super) fn sample(args: &SampleArgs) -> Result<(), Ending> {
         quantity: args.quantity.clone(),
         site: args.site.clone(),
         frequency_hz: args.frequency_hz,
+        direction_deg: args.direction_deg,
         spatial: match args.spatial {
             Spatial::Bilinear => SpatialRule::Bilinear(CoastRule::Missing),
             Spatial::Renormalise => SpatialRule::Bilinear(CoastRule::Renormalise),
@@ -33,6 +34,7 @@ pub(super) fn sample(args: &SampleArgs) -> Result<(), Ending> {
     };
     let looked = match args.kind {
         SampleKind::Wind => look_up_wind(&question),
+        SampleKind::Spectrum => look_up_spectrum(&question),
         SampleKind::Levels => look_up_levels(&question),
         SampleKind::Sites => look_up_sites(&question),
     };

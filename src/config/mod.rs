@@ -10,6 +10,7 @@ mod matching;
 mod place;
 mod set;
 mod sites;
+mod spectra;
 mod study;
 mod wind;
 
@@ -18,5 +19,6 @@ pub use fit::{RelationSection, check_replicates};
 pub use levels::{LevelsInput, level_options_from};
 pub use matching::{MatchSection, WindowSpeed};
 pub use sites::SitesInput;
+pub use spectra::{SpectraInput, spectra_options_from};
 pub use study::{ReportSection, Study, TableFormat, read_study};
 pub use wind::{WindInput, WindOrigin, wind_options_from};

@@ -6,6 +6,7 @@ use super::levels::{LevelsInput, RawLevels};
 use super::matching::{MatchSection, RawMatch};
 use super::place::WindSpeedMS;
 use super::sites::{RawSite, RawSites, SitesInput};
+use super::spectra::{RawSpectra, SpectraInput};
 use super::wind::{RawWind, WindInput};
 use serde::{Deserialize, Serialize};
 use std::path::{Path, PathBuf};
@@ -31,6 +32,8 @@ struct RawStudy {
     sites: Option<RawSites>,
     #[serde(default)]
     wind: Vec<Spanned<RawWind>>,
+    #[serde(default)]
+    spectra: Vec<Spanned<RawSpectra>>,
     #[serde(default)]
     levels: Vec<Spanned<RawLevels>>,
     #[serde(default, rename = "match")]
@@ -87,6 +90,8 @@ pub struct Study {
     pub sites: SitesInput,
     /// Wind inputs.
     pub wind: Vec<WindInput>,
+    /// Inputs of directional wave spectra.
+    pub spectra: Vec<SpectraInput>,
     /// Level tables.
     pub levels: Vec<LevelsInput>,
     /// How levels and wind are brought together.
@@ -124,6 +129,7 @@ impl RawStudy {
             }
             wind.push(input);
         }
+        let spectra = resolve_spectra(self.spectra, &wind, base, complaint)?;
         let mut levels = Vec::new();
         for raw in self.levels {
             let place = raw.span().start;
@@ -141,6 +147,7 @@ impl RawStudy {
             tables,
             sites: SitesInput::resolve(self.site, self.sites, base, complaint)?,
             wind,
+            spectra,
             levels,
             matching: self.matching.resolve(complaint)?,
             relation: self.relation.resolve(complaint)?,
@@ -156,6 +163,35 @@ impl RawStudy {
             },
         })
     }
+}
+
+fn resolve_spectra(
+    raw: Vec<Spanned<RawSpectra>>,
+    wind: &[WindInput],
+    base: &Path,
+    complaint: Complaint<'_>,
+) -> Result<Vec<SpectraInput>, StudyError> {
+    let mut spectra: Vec<SpectraInput> = Vec::new();
+    for raw in raw {
+        let place = raw.span().start;
+        let input = raw.into_inner().resolve(base, complaint, place)?;
+        if spectra.iter().any(|known| known.id == input.id) {
+            return Err(complaint.at(place, format!("spectra `{}` are there twice; ids must differ", input.id)));
+        }
+        if let Some(name) = &input.wind
+            && !wind.iter().any(|known| known.id.0 == *name)
+        {
+            let ids: Vec<&str> = wind.iter().map(|known| known.id.0.as_str()).collect();
+            let problem = format!(
+                "spectra `{}`: there is no wind `{name}` (`spectra.wind`); the winds are {}",
+                input.id,
+                if ids.is_empty() { "none".to_owned() } else { ids.join(", ") }
+            );
+            return Err(complaint.at(place, problem));
+        }
+        spectra.push(input);
+    }
+    Ok(spectra)
 }
 
 impl RawReport {

@@ -45,6 +45,7 @@ causes! {
         PoleRow = "pole_row": "the site lies between the last grid row and the pole, where one pole value serves all longitudes",
 
         NearestStation = "nearest_station": "the value is that of the nearest station, within the distance limit",
+        StationPlaceUnknown = "station_place_unknown": "the file does not say where its only station is; it is taken to be at the site",
         FewSamples = "few_samples": "the window holds fewer level samples than expected",
     }
 }
@@ -68,6 +69,15 @@ causes! {
         Excluded = "excluded": "an exclusion rule of the study applies",
         NoWind = "no_wind": "there is no wind for the window",
         NoValue = "no_value": "the wind table has no value at this step",
+        IncompleteSpectrum = "incomplete_spectrum": "some densities of the spectrum are missing, and missing is not zero",
+        NoEnergy = "no_energy": "the spectrum holds no energy: it has no period, no direction and no overlap",
+        NoSpectrum = "no_spectrum": "there is no wave spectrum for this place and time",
+        NoWindSea = "no_wind_sea": "the wind drives no part of this sea, or there is no wind for it",
+        NoFrequency = "no_frequency": "the frequency lies outside the spectrum",
+        NoOpposingEnergy = "no_opposing_energy": "the spectrum holds no energy in opposite directions at this frequency: the radiated level is undefined, not zero",
+        SectorOfDirections = "sector_of_directions": "the directions of the spectrum are a sector: opposing waves cannot be judged",
+        NoTail = "no_tail": "no laid-on tail is found in the spectrum",
+        MomentsOnly = "moments_only": "the source gives directional moments alone, which do not tell the overlap of opposing waves",
     }
 }
 

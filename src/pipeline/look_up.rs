@@ -31,6 +31,8 @@ pub struct LookUp {
     pub site: Option<String>,
     /// Band centre, Hz.
     pub frequency_hz: Option<f64>,
+    /// Direction of travel, degrees.
+    pub direction_deg: Option<f64>,
     /// How wind is taken from the grid.
     pub spatial: SpatialRule,
     /// Keys of the input's section, `key=value`.
@@ -57,7 +59,7 @@ pub struct Answer {
 }
 
 impl Answer {
-    fn value(quantity: &str, value: f64, unit: &str) -> Self {
+    pub(super) fn value(quantity: &str, value: f64, unit: &str) -> Self {
         Self {
             status: "ok",
             quantity: quantity.to_owned(),
@@ -69,13 +71,13 @@ impl Answer {
         }
     }
 
-    fn missing(quantity: &str, unit: &str, why: Missing, detail: &str) -> Self {
+    pub(super) fn missing(quantity: &str, unit: &str, why: Missing, detail: &str) -> Self {
         let message =
             if detail.is_empty() { why.sentence().to_owned() } else { format!("{}: {detail}", why.sentence()) };
         Self { status: "missing", value: None, message: Some(message), ..Self::value(quantity, 0.0, unit) }
     }
 
-    fn flagged(mut self, flags: FlagSet) -> Self {
+    pub(super) fn flagged(mut self, flags: FlagSet) -> Self {
         if !flags.is_empty() {
             self.status = "flagged";
             self.flags = flags.iter().map(crate::model::Flag::name).collect();
@@ -91,11 +93,11 @@ impl Answer {
     }
 }
 
-fn needed<T>(value: Option<T>, option: &'static str) -> Result<T, Error> {
+pub(super) fn needed<T>(value: Option<T>, option: &'static str) -> Result<T, Error> {
     value.ok_or_else(|| Error::CommandLine(format!("this look-up needs {option}")))
 }
 
-fn instant(text: &str) -> Result<Instant, Error> {
+pub(super) fn instant(text: &str) -> Result<Instant, Error> {
     Instant::parse(text).map_err(|error| Error::CommandLine(format!("--time: {error}")))
 }
 
@@ -153,7 +155,7 @@ pub fn look_up_levels(question: &LookUp) -> Result<Answer, Error> {
     }
 }
 
-fn unknown(quantity: &str, expected: &str) -> Error {
+pub(super) fn unknown(quantity: &str, expected: &str) -> Error {
     Error::CommandLine(format!("--quantity {quantity} is not known here; expected {expected}"))
 }
 

@@ -8,6 +8,8 @@ use std::path::PathBuf;
 pub(crate) enum SampleKind {
     /// Gridded 10 m wind
     Wind,
+    /// Directional wave spectra, gridded or at stations
+    Spectrum,
     /// A table of band levels
     Levels,
     /// A site list
@@ -45,15 +47,19 @@ pub(crate) struct SampleArgs {
     #[arg(long, value_name = "TIME")]
     pub(crate) time: Option<String>,
     /// What to give. wind: wind_speed, wind_from_direction, eastward_wind, northward_wind; levels: level, count_valid,
-    /// count_bands; sites: latitude, longitude, depth
+    /// count_bands; sites: latitude, longitude, depth; spectrum: the CF names of wave height, periods, direction, spread and
+    /// densities, overlap_2pi, cross_share, radiated_level, tail_start (a wrong name lists them all)
     #[arg(long, value_name = "NAME")]
     pub(crate) quantity: Option<String>,
     /// Site, where a table or list holds several
     #[arg(long, value_name = "ID")]
     pub(crate) site: Option<String>,
-    /// Band centre of a level, Hz
+    /// Band centre of a level, frequency of the waves, or of the sound (radiated_level), Hz
     #[arg(long, value_name = "HZ")]
     pub(crate) frequency_hz: Option<f64>,
+    /// Direction that waves go to, degrees clockwise from north, for a directional density
+    #[arg(long, value_name = "DEG", allow_negative_numbers = true)]
+    pub(crate) direction_deg: Option<f64>,
     /// Height of the wind to choose, m
     #[arg(long, value_name = "M")]
     pub(crate) height_m: Option<f64>,

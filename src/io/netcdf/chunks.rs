@@ -18,12 +18,7 @@ impl Reader {
     ) -> Result<Vec<f64>, NetcdfError> {
         let shape = self.header.shape(variable);
         let grid: Vec<u64> = shape.iter().zip(&chunks.shape).map(|(length, chunk)| length.div_ceil(*chunk)).collect();
-        let chunk_bytes = chunks
-            .shape
-            .iter()
-            .try_fold(number.size() as u64, |bytes, length| bytes.checked_mul(*length))
-            .filter(|bytes| *bytes <= LARGEST_CHUNK_BYTES)
-            .ok_or_else(|| self.of_variable(variable, "its chunks are larger than 4 GiB".to_owned()))?;
+        let chunk_bytes = self.chunk_bytes(variable, chunks, number)?;
         let parts = ChunkParts::of(wanted, chunks, &grid);
         let width = wanted.nodes.len();
         let mut values = vec![f64::NAN; parts.steps.len() * width];
@@ -61,8 +56,23 @@ impl Reader {
         Ok(values)
     }
 
+    /// Bytes of a decoded chunk.
+    pub(super) fn chunk_bytes(
+        &self,
+        variable: &Variable,
+        chunks: &Chunks,
+        number: NumberType,
+    ) -> Result<u64, NetcdfError> {
+        chunks
+            .shape
+            .iter()
+            .try_fold(number.size() as u64, |bytes, length| bytes.checked_mul(*length))
+            .filter(|bytes| *bytes <= LARGEST_CHUNK_BYTES)
+            .ok_or_else(|| self.of_variable(variable, "its chunks are larger than 4 GiB".to_owned()))
+    }
+
     /// Brings a chunk into the scratch buffers, inflated but not unshuffled.
-    fn load_chunk(
+    pub(super) fn load_chunk(
         &self,
         variable: &Variable,
         chunks: &Chunks,
@@ -189,10 +199,12 @@ impl ChunkParts {
     }
 }
 
-struct Loaded {
+/// How a chunk lies in the scratch buffers.
+pub(super) struct Loaded {
     /// The data are in `Scratch::inflated`, else in `Scratch::stored`.
-    inflated: bool,
-    shuffled: bool,
+    pub(super) inflated: bool,
+    /// The bytes lie in planes.
+    pub(super) shuffled: bool,
 }
 
 /// Undoes HDF5's shuffle: planes of first bytes, second bytes ... become values; bytes beyond the last whole value stand as

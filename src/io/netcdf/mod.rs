@@ -14,6 +14,7 @@ mod packing;
 mod read;
 mod roles;
 mod sniff;
+mod spectra;
 mod time_axis;
 mod wind;
 mod wind_merge;
@@ -21,5 +22,6 @@ mod wind_options;
 mod wind_part;
 
 pub use error::NetcdfError;
+pub use spectra::*;
 pub use wind::{WindKind, WindSource, open_wind};
 pub use wind_options::{DirectionSense, WindOptions};

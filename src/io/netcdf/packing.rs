@@ -146,6 +146,12 @@ impl Packing {
         Some((a.min(b), a.max(b)))
     }
 
+    /// The raw numbers that are missing, where nothing else has to be done to raw numbers: no scale, no valid range.
+    pub(super) fn only_missing(&self) -> Option<&[f64]> {
+        let identity = (self.scale - 1.0).abs() < f64::EPSILON && self.offset == 0.0 && self.unsigned_turn.is_none();
+        (identity && self.low.is_infinite() && self.high.is_infinite()).then_some(self.missing.as_slice())
+    }
+
     /// The value of a raw number; NaN when it is missing.
     pub(super) fn value(&self, raw: f64) -> f64 {
         let raw = match self.unsigned_turn {

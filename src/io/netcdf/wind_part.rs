@@ -169,7 +169,7 @@ fn direction_to_from_degrees(variable: &Variable, units: Option<&str>, options: 
 
 /// The sense that a long name states. Only whole phrases count: "clockwise from north" and "relative to north" say where an
 /// angle starts, not where a wind goes.
-fn sense_in_words(long: &str) -> Option<DirectionSense> {
+pub(super) fn sense_in_words(long: &str) -> Option<DirectionSense> {
     const FROM: [&str; 7] =
         ["from direction", "coming from", "comes from", "blows from", "blowing from", "from which", "direction from"];
     const TO: [&str; 7] = ["to direction", "going to", "goes to", "blowing to", "blows to", "to which", "direction to"];
