@@ -64,10 +64,9 @@ pub struct SpectraSeries {
 }
 
 impl SpectraSeries {
-    /// A series with nothing in it yet.
+    /// A series with nothing in it yet, and no room for numbers.
     pub fn empty(source: SourceId, site: String, axes: SpectrumAxes, steps: Vec<Instant>, max_gap_ms: i64) -> Self {
         let count = steps.len();
-        let numbers = vec![f32::NAN; count * SEA_ROWS * axes.frequencies()];
         Self {
             source,
             site,
@@ -79,15 +78,20 @@ impl SpectraSeries {
             nearest_km: Vec::new(),
             nodes: Vec::new(),
             max_gap_ms,
-            numbers,
+            numbers: Vec::new(),
         }
     }
 
-    /// One row of a step.
+    /// Takes room for the numbers of all steps, missing until they are filled.
+    pub fn take_room(&mut self) {
+        self.numbers = vec![f32::NAN; self.steps.len() * SEA_ROWS * self.axes.frequencies()];
+    }
+
+    /// One row of a step; empty where no step has a spectrum.
     pub fn row(&self, step: usize, row: SeaRow) -> &[f32] {
         let frequencies = self.axes.frequencies();
         let start = (step * SEA_ROWS + row as usize) * frequencies;
-        &self.numbers[start..start + frequencies]
+        self.numbers.get(start..start + frequencies).unwrap_or_default()
     }
 
     /// One row of a step, to fill.

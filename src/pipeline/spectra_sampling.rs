@@ -18,8 +18,10 @@ use std::collections::{BTreeMap, BTreeSet};
 
 /// Steps that make a task.
 const STEPS_A_TASK: usize = 16;
-/// Tasks that are in hand before their results are put in place.
-const TASKS_AT_A_TIME: usize = 16;
+/// Tasks a thread that are in hand before their results are put in place.
+const TASKS_A_THREAD: usize = 4;
+/// Steps at the borders of tasks that are kept until their neighbours come in.
+const MOST_BORDERS: usize = 64;
 /// Two readings of one step agree within this share.
 const SAME_READING: f32 = 1e-3;
 
@@ -54,21 +56,13 @@ pub fn sample_spectra(
     });
     let range = steps_of(source.steps(), window);
     let steps = source.steps()[range.clone()].to_vec();
-    let job = Job {
-        source,
-        reducer: Reducer::new(source.axes(), &rules.water, rules.reduce),
-        rule: rules.spatial,
-        stencils: match (sites, only_station(source)) {
-            ([_], Some(stencil)) => vec![Stencils::Fixed(Ok(stencil))],
-            _ => sites.iter().map(|site| stencils(source, site, &rules.spatial, &steps, range.start)).collect(),
-        },
-        winds: sites.iter().enumerate().map(|(k, _)| winds(wind.get(k).copied().flatten(), &steps)).collect(),
-        first: range.start,
-        count: steps.len(),
+    let stencils: Vec<Stencils> = match (sites, only_station(source)) {
+        ([_], Some(stencil)) => vec![Stencils::Fixed(Ok(stencil))],
+        _ => sites.iter().map(|site| stencils(source, site, &rules.spatial, &steps, range.start)).collect(),
     };
     let mut all: Vec<SpectraSeries> = sites
         .iter()
-        .zip(&job.stencils)
+        .zip(&stencils)
         .map(|(site, stencils)| {
             let mut series = SpectraSeries::empty(
                 source.id().clone(),
@@ -84,7 +78,22 @@ pub fn sample_spectra(
             series
         })
         .collect();
-    job.run(window, &mut all, progress)?;
+    // Sites that the source never serves take neither room nor work.
+    let served: Vec<bool> = stencils.iter().map(|stencils| stencils.all().iter().any(Result::is_ok)).collect();
+    let winds = (0..sites.len()).map(|k| winds(wind.get(k).copied().flatten(), &steps));
+    let job = Job {
+        source,
+        reducer: Reducer::new(source.axes(), &rules.water, rules.reduce),
+        rule: rules.spatial,
+        winds: winds.zip(&served).filter(|(_, served)| **served).map(|(winds, _)| winds).collect(),
+        stencils: stencils.into_iter().zip(&served).filter(|(_, served)| **served).map(|(one, _)| one).collect(),
+        first: range.start,
+        count: steps.len(),
+    };
+    let mut room: Vec<&mut SpectraSeries> =
+        all.iter_mut().zip(&served).filter(|(_, served)| **served).map(|(series, _)| series).collect();
+    room.iter_mut().for_each(|series| series.take_room());
+    job.run(window, &mut room, progress)?;
     Ok(all)
 }
 
@@ -249,7 +258,7 @@ impl Job<'_> {
     fn run(
         &self,
         window: Option<Window>,
-        all: &mut [SpectraSeries],
+        all: &mut [&mut SpectraSeries],
         progress: &dyn Progress,
     ) -> Result<(), NetcdfError> {
         let nodes: Vec<NodeId> = self
@@ -269,7 +278,7 @@ impl Job<'_> {
         progress.start(slabs.len() as u64, "reading spectra");
         let mut borders: BTreeMap<usize, Vec<f64>> = BTreeMap::new();
         let mut room = vec![0.0; self.source.axes().frequencies()];
-        for batch in tasks.chunks(TASKS_AT_A_TIME) {
+        for batch in tasks.chunks(TASKS_A_THREAD * rayon::current_num_threads()) {
             let results: Vec<Result<TaskResult, NetcdfError>> = batch
                 .par_iter()
                 .map(|task| {
@@ -398,7 +407,7 @@ impl Job<'_> {
         &self,
         slabs: &[SpectraSlab],
         result: TaskResult,
-        all: &mut [SpectraSeries],
+        all: &mut [&mut SpectraSeries],
         borders: &mut BTreeMap<usize, Vec<f64>>,
         room: &mut [f64],
     ) -> Result<(), NetcdfError> {
@@ -439,14 +448,14 @@ impl Job<'_> {
             }
         }
         // Slabs come in order of time: only the latest few can still meet a neighbour.
-        while borders.len() > 4 * TASKS_AT_A_TIME {
+        while borders.len() > MOST_BORDERS {
             borders.pop_first();
         }
         Ok(())
     }
 
     /// The pair of a step and its successor, where both have come in.
-    fn join(&self, step: usize, all: &mut [SpectraSeries], borders: &BTreeMap<usize, Vec<f64>>, room: &mut [f64]) {
+    fn join(&self, step: usize, all: &mut [&mut SpectraSeries], borders: &BTreeMap<usize, Vec<f64>>, room: &mut [f64]) {
         let cells = self.source.axes().cells();
         let (Some(earlier), Some(later)) = (borders.get(&step), borders.get(&(step + 1))) else { return };
         for (site, series) in all.iter_mut().enumerate() {

@@ -339,7 +339,7 @@ fn directions_to_rad(
         match variable.map(standard_name).as_deref() {
             Some("sea_surface_wave_to_direction") => Some(DirectionSense::To),
             Some("sea_surface_wave_from_direction") => Some(DirectionSense::From),
-            _ => sense_in_words(&described),
+            _ => sense_in_words(&described).or_else(|| sense_of_waves(&described)),
         }
     });
     let Some(sense) = sense else {
@@ -361,6 +361,18 @@ fn directions_to_rad(
         }
     );
     Ok((to.collect(), words))
+}
+
+/// The sense that words about waves state, beyond those about any direction.
+fn sense_of_waves(described: &str) -> Option<DirectionSense> {
+    let has = |phrases: [&str; 4]| phrases.iter().any(|phrase| described.contains(phrase));
+    let to = has(["go to", "travel to", "propagate to", "move to"]);
+    let from = has(["come from", "arrive from", "waves from", "arriving from"]);
+    match (to, from) {
+        (true, false) => Some(DirectionSense::To),
+        (false, true) => Some(DirectionSense::From),
+        _ => None,
+    }
 }
 
 /// Whether equal steps of the values make a whole turn.

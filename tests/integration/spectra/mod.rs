@@ -1,0 +1,6 @@
+//! Directional spectra: readers, sampling, the reference set and real files.
+
+mod hazards;
+mod reference;
+mod sampling;
+mod support;
