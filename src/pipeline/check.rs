@@ -1,5 +1,6 @@
 //! `check`: opens every input and says what was understood; computes nothing.
 
+use super::check_spectra::{SpectraCheck, check_spectra};
 use super::inputs::{OpenLevels, OpenWind, open_inputs};
 use super::progress::Progress;
 use crate::Error;
@@ -22,6 +23,8 @@ pub struct CheckReport {
     pub sites: Vec<SiteCheck>,
     /// The wind inputs.
     pub wind: Vec<WindCheck>,
+    /// Inputs of directional spectra.
+    pub spectra: Vec<SpectraCheck>,
     /// The level tables.
     pub levels: Vec<LevelsCheck>,
     /// What lacks or looks wrong.
@@ -116,6 +119,8 @@ pub fn check_study(study: &Study, progress: &dyn Progress) -> Result<CheckReport
         .iter()
         .map(|wind| check_wind(wind, &inputs.sites, &mut spans, &mut problems))
         .collect::<Result<_, Error>>()?;
+    let spectra: Vec<SpectraCheck> =
+        inputs.spectra.iter().map(|spectra| check_spectra(spectra, &inputs.sites, &mut problems)).collect();
     let mut levels = Vec::new();
     for table in &inputs.levels {
         levels.push(check_levels(table, &inputs.sites, &spans, &mut problems, progress)?);
@@ -126,7 +131,7 @@ pub fn check_study(study: &Study, progress: &dyn Progress) -> Result<CheckReport
         }
     }
     let sites = inputs.sites.iter().map(check_site).collect();
-    Ok(CheckReport { study: study.name.clone(), sites, wind, levels, problems, resolved: study.clone() })
+    Ok(CheckReport { study: study.name.clone(), sites, wind, spectra, levels, problems, resolved: study.clone() })
 }
 
 fn check_site(site: &Site) -> SiteCheck {
@@ -325,6 +330,9 @@ impl CheckReport {
         }
         for wind in &self.wind {
             out.push_str(&wind.text());
+        }
+        for spectra in &self.spectra {
+            out.push_str(&spectra.text());
         }
         for levels in &self.levels {
             out.push_str(&levels.text());

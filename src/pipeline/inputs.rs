@@ -1,9 +1,9 @@
 //! Opens everything a study names.
 
 use crate::Error;
-use crate::config::{LevelsInput, Study, WindInput, WindOrigin};
+use crate::config::{LevelsInput, SpectraInput, Study, WindInput, WindOrigin};
 use crate::io::levels::{LevelError, LevelOptions, LevelTable, open_levels};
-use crate::io::netcdf::{WindSource, open_wind};
+use crate::io::netcdf::{SpectraSource, WindSource, open_spectra, open_wind};
 use crate::io::sites::{read_sites, read_track};
 use crate::model::Site;
 use std::path::PathBuf;
@@ -15,6 +15,8 @@ pub struct Inputs {
     pub sites: Vec<Site>,
     /// Wind inputs, in the order of the study.
     pub wind: Vec<OpenWind>,
+    /// Directional spectra, in the order of the study.
+    pub spectra: Vec<OpenSpectra>,
     /// Level tables, in the order of the study.
     pub levels: Vec<OpenLevels>,
     /// Remarks on site lists and tracks.
@@ -28,6 +30,15 @@ pub struct OpenWind {
     pub input: WindInput,
     /// A gridded source; `None` for a table, which is read when it is needed.
     pub grid: Option<WindSource>,
+}
+
+/// An input of directional spectra, opened.
+#[derive(Debug)]
+pub struct OpenSpectra {
+    /// What the study says of it.
+    pub input: SpectraInput,
+    /// The source.
+    pub source: SpectraSource,
 }
 
 /// A level table, opened.
@@ -53,12 +64,17 @@ pub fn open_inputs(study: &Study) -> Result<Inputs, Error> {
         };
         wind.push(OpenWind { input: input.clone(), grid });
     }
+    let mut spectra = Vec::new();
+    for input in &study.spectra {
+        let source = open_spectra(input.id.clone(), &input.files, &input.options)?;
+        spectra.push(OpenSpectra { input: input.clone(), source });
+    }
     let mut levels = Vec::new();
     for input in &study.levels {
         let only = if let [only] = sites.as_slice() { Some(only.id.as_str()) } else { None };
         levels.push(OpenLevels { input: input.clone(), table: open_levels_of(&input.files, &input.options, only)? });
     }
-    Ok(Inputs { sites, wind, levels, remarks })
+    Ok(Inputs { sites, wind, spectra, levels, remarks })
 }
 
 /// Opens level tables; where nothing names their site and there is only one, it is that.
@@ -118,6 +134,7 @@ impl Inputs {
                 WindOrigin::Table { files: table, .. } => files.extend(table.iter().cloned()),
             }
         }
+        files.extend(self.spectra.iter().flat_map(|spectra| spectra.input.files.iter().cloned()));
         files.extend(self.levels.iter().flat_map(|levels| levels.input.files.iter().cloned()));
         files.extend(study.sites.file.iter().cloned());
         files.extend(study.sites.sites.iter().filter_map(|(_, track)| track.clone()));

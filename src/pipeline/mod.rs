@@ -1,6 +1,7 @@
 //! The jobs: read, compute, write. One file a job.
 
 mod check;
+mod check_spectra;
 mod fitting;
 mod inputs;
 mod look_up;
@@ -16,8 +17,9 @@ mod simulate;
 mod spectra_sampling;
 
 pub use check::{CheckReport, check_study};
+pub use check_spectra::SpectraCheck;
 pub use fitting::{fit_matched, fit_pairs, relations_json, write_relations};
-pub use inputs::{Inputs, OpenLevels, OpenWind, open_inputs, open_sites};
+pub use inputs::{Inputs, OpenLevels, OpenSpectra, OpenWind, open_inputs, open_sites};
 pub use look_up::{Answer, LookUp, look_up_levels, look_up_sites, look_up_wind};
 pub use look_up_sea::look_up_spectrum;
 pub use matching::{Counts, Matched, bring_together, write_tables};

@@ -351,7 +351,7 @@ impl Job<'_> {
                     let mix = &mut blended[site * cells..(site + 1) * cells];
                     let rows = &mut of_step.rows[site * width..(site + 1) * width];
                     let found = stencils.at(step).as_ref().map_err(|why| *why).and_then(|stencil| {
-                        reduce_step(&self.reducer, axes, stencil, &self.rule, spectra, wind, &mut scratch, mix, rows)
+                        reduce_step(&self.reducer, axes, (stencil, &self.rule), spectra, wind, &mut scratch, mix, rows)
                     });
                     of_step.sites.push(found.map(|sea| (sea.flags, sea.tail_start_hz)));
                 }

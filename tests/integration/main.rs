@@ -9,11 +9,8 @@ mod layering;
 mod real_data;
 mod sensitivity;
 mod simulate;
-<<<<<<< HEAD
-mod spreading;
-=======
 mod spectra;
->>>>>>> f5d1a22 (Spectra: tests, fixtures, bench, check)
+mod spreading;
 mod study_file;
 mod support;
 mod tables;

@@ -74,6 +74,13 @@ impl<'a> Reducer<'a> {
 
     /// What moments alone tell, such as blended ones; overlaps and tail are left missing. `None` without energy.
     pub fn from_moments(&self, moments: &Moments, wind: Option<WindOver>) -> Option<SeaState> {
+        let mut state = self.totals(moments, wind)?;
+        add_directions(moments, &mut state.by_frequency);
+        Some(state)
+    }
+
+    /// The same without directions at every frequency, of which there is only the density. `None` without energy.
+    pub fn totals(&self, moments: &Moments, wind: Option<WindOver>) -> Option<SeaState> {
         let frequency = &self.axes.frequency_hz;
         let integral = |values: &[f64], power: i32| -> f64 {
             let weighted = values.iter().zip(frequency).zip(&self.axes.frequency_weight_hz);
@@ -133,21 +140,24 @@ impl<'a> Reducer<'a> {
 fn by_frequency(moments: &Moments) -> FrequencyStates {
     let count = moments.density.len();
     let missing = || vec![f64::NAN; count];
-    let mut states = FrequencyStates {
+    FrequencyStates {
         density_m2_hz: moments.density.clone(),
         mean_from_deg: missing(),
         spread_deg: missing(),
         overlap_2pi_bins_per_rad: missing(),
         overlap_2pi_fourier_per_rad: missing(),
         zero_pair_share: missing(),
-    };
-    for k in 0..count {
+    }
+}
+
+/// Mean direction and spread at every frequency with energy.
+fn add_directions(moments: &Moments, states: &mut FrequencyStates) {
+    for k in 0..moments.density.len() {
         if moments.density[k] > 0.0 {
             states.mean_from_deg[k] = from_direction_deg(moments.a1[k], moments.b1[k]);
             states.spread_deg[k] = spread_deg(moments.a1[k], moments.b1[k], moments.density[k]);
         }
     }
-    states
 }
 
 /// Direction that waves come from whose mean travel vector this is, degrees; NaN where it has no direction.

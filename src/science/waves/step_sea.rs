@@ -33,7 +33,7 @@ pub enum NodeState {
 impl NodeState {
     /// Of a spectrum.
     pub fn of(densities: &[f64]) -> Self {
-        let missing = densities.iter().filter(|density| density.is_nan()).count();
+        let missing: usize = densities.iter().map(|density| usize::from(density.is_nan())).sum();
         match missing {
             0 => Self::Complete,
             all if all == densities.len() => Self::Missing,
@@ -72,8 +72,7 @@ pub struct StepSea {
 pub fn reduce_step(
     reducer: &Reducer<'_>,
     axes: &SpectrumAxes,
-    stencil: &Stencil,
-    rule: &SpatialRule,
+    (stencil, rule): (&Stencil, &SpatialRule),
     spectra: NodeSpectra<'_>,
     wind: Option<WindOver>,
     scratch: &mut StepScratch,

@@ -96,7 +96,7 @@ fn sea_over(
         flags = flags.union(series.flags[weight.step]);
     }
     let moments = mean_moments(series, &weights);
-    let Some(mut state) = reducer.from_moments(&moments, wind) else {
+    let Some(mut state) = reducer.totals(&moments, wind) else {
         return Sampled::Missing(Missing::NoEnergy);
     };
     let tails = weights.iter().map(|weight| series.tail_start_hz[weight.step]);

@@ -235,7 +235,8 @@ fn coordinate<'a>(
 /// Whether values just count: 0, 1, 2 ... or 1, 2, 3 ...
 fn is_index(values: &[f64]) -> bool {
     let start = values.first().copied().unwrap_or(f64::NAN);
-    (start == 0.0 || start == 1.0)
+    matches!(start.total_cmp(&start.trunc()), std::cmp::Ordering::Equal)
+        && (0.0..=1.0).contains(&start)
         && values.iter().enumerate().all(|(k, value)| (value - start - k as f64).abs() < 1e-9)
 }
 

@@ -141,8 +141,10 @@ impl Part {
     pub(super) fn convert(&self, spectrum: &mut [f64]) -> Result<(), String> {
         match (self.packing.only_missing(), self.encoding) {
             (Some(&[missing]), DensityEncoding::Linear) => {
+                // Raw numbers are exact: the missing one has one pattern of bits.
+                let missing = missing.to_bits();
                 for value in spectrum.iter_mut() {
-                    *value = if *value == missing { f64::NAN } else { *value * self.factor };
+                    *value = if value.to_bits() == missing { f64::NAN } else { *value * self.factor };
                 }
             }
             (_, DensityEncoding::Linear) => {
@@ -167,12 +169,9 @@ impl Part {
                 return Ok(());
             }
         }
-        let (mut least, mut most) = (0.0_f64, 0.0_f64);
-        for value in spectrum.iter() {
-            least = least.min(*value);
-            most = most.max(*value);
-        }
-        if least < 0.0 {
+        if spectrum.iter().fold(false, |any, value| any | (*value < 0.0)) {
+            let least = spectrum.iter().copied().fold(0.0, f64::min);
+            let most = spectrum.iter().copied().fold(0.0, f64::max);
             if -least > ROUNDING_SHARE * most {
                 return Err(format!(
                     "its density goes down to {least}; expected none below zero (logarithms? set `spectra.encoding`)"
