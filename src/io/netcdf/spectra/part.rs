@@ -169,7 +169,8 @@ impl Part {
                 return Ok(());
             }
         }
-        if spectrum.iter().fold(false, |any, value| any | (*value < 0.0)) {
+        let below: usize = spectrum.iter().map(|value| usize::from(*value < 0.0)).sum();
+        if below > 0 {
             let least = spectrum.iter().copied().fold(0.0, f64::min);
             let most = spectrum.iter().copied().fold(0.0, f64::max);
             if -least > ROUNDING_SHARE * most {
