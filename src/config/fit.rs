@@ -68,30 +68,3 @@ pub fn check_replicates(number: usize) -> Result<usize, String> {
         ))
     }
 }
-
-impl RelationSection {
-    /// What was done, in sentences.
-    pub fn words(&self) -> String {
-        let options = &self.options;
-        let loss = match options.loss {
-            Loss::Tukey => "Tukey's bisquare (4.685 scales)",
-            Loss::Huber => "Huber's (1.345 scales)",
-            Loss::LeastSquares => "least squares",
-        };
-        let scatter = match options.scatter {
-            ScatterModel::Estimated => {
-                "The scatter of floor and wind part against each other is estimated, and shapes the corner between them."
-            }
-            ScatterModel::FixedPowerSum => "Floor and wind part add in power without scatter against each other.",
-        };
-        let intervals = if options.replicates == 0 {
-            "No intervals were computed.".to_owned()
-        } else {
-            format!(
-                "Intervals: 95 %, from {} replicates of a circular moving-block bootstrap over blocks of time, seed {}.",
-                options.replicates, options.seed
-            )
-        };
-        format!("Loss: {loss}. {scatter} {intervals}")
-    }
-}

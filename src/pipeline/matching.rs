@@ -46,6 +46,21 @@ pub struct Counts {
     pub rows_not_used: BTreeMap<&'static str, u64>,
 }
 
+impl Matched {
+    /// From the first to the last instant that has a window.
+    pub fn span(&self) -> Option<Window> {
+        span(&self.records)
+    }
+}
+
+fn span(records: &[SensorRecord]) -> Option<Window> {
+    records
+        .iter()
+        .filter_map(|record| Some((record.windows.first()?.start, record.windows.iter().map(|w| w.end).max()?)))
+        .reduce(|a, b| (a.0.min(b.0), a.1.max(b.1)))
+        .map(|(start, end)| Window { start, end })
+}
+
 /// Brings levels and wind together.
 ///
 /// # Errors
@@ -58,11 +73,7 @@ pub fn bring_together(study: &Study, inputs: &Inputs, progress: &dyn Progress) -
     let mut counts = Counts::default();
     let mut remarks = inputs.remarks.clone();
     let records = gather_levels(study, inputs, &mut counts, &mut remarks, progress)?;
-    let whole = records
-        .iter()
-        .filter_map(|record| Some((record.windows.first()?.start, record.windows.iter().map(|w| w.end).max()?)))
-        .reduce(|a, b| (a.0.min(b.0), a.1.max(b.1)))
-        .map(|(start, end)| Window { start, end });
+    let whole = span(&records);
     let mut series = Vec::new();
     for wind in &inputs.wind {
         series.extend(wind_series(study, wind, &inputs.sites, whole, &mut remarks, progress)?);

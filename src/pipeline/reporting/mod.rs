@@ -1,6 +1,7 @@
 //! `report`: figures and the page.
 
 mod figures;
+mod methods;
 mod page;
 pub(super) mod words;
 
@@ -80,10 +81,13 @@ pub(super) fn write_report(
         .collect::<Result<_, Error>>()?;
     progress.finish();
     let page = folder.join("report.html");
-    let document = page::document(input, &pairings, whole, per_pairing);
+    let methods = methods::methods(input);
+    let document = page::document(input, &pairings, &methods, whole, per_pairing);
     replace_with(&page, html(&document).as_bytes())?;
+    let text = folder.join("methods.md");
+    replace_with(&text, methods.markdown(input.study).as_bytes())?;
     let mut files: Vec<PathBuf> = written.into_iter().flatten().collect();
-    files.push(page);
+    files.extend([page, text]);
     Ok(files)
 }
 

@@ -1,10 +1,10 @@
 //! The page, filled from the results.
 
 use super::figures::{percentiles, wind_classes};
+use super::methods::Methods;
 use super::words::{estimate, reference};
 use super::{Pairing, Placed, ReportInput};
-use crate::config::WindowSpeed;
-use crate::model::{FittedBand, LevelStatistic, Missing, RelationWarning, Verdict};
+use crate::model::{FittedBand, Missing, RelationWarning, Verdict};
 use crate::pipeline::provenance::PROGRAM;
 use crate::report::{Block, Column, Document, Section, Table, number};
 
@@ -15,6 +15,7 @@ const CAUTION: &str = "These results describe levels at the sensors and their re
 pub(super) fn document(
     input: &ReportInput<'_>,
     pairings: &[Pairing<'_>],
+    methods: &Methods,
     whole: Vec<Placed>,
     per_pairing: Vec<Vec<Placed>>,
 ) -> Document {
@@ -22,7 +23,7 @@ pub(super) fn document(
     for (pairing, figures) in pairings.iter().zip(per_pairing) {
         sections.push(pairing_section(input, pairing, figures));
     }
-    sections.push(methods_section(input));
+    sections.push(methods_section(methods));
     sections.push(provenance_section(input));
     Document {
         title: input.study.name.clone(),
@@ -35,14 +36,9 @@ pub(super) fn document(
 }
 
 fn subtitle(input: &ReportInput<'_>) -> String {
-    let windows = input.matched.records.iter().flat_map(|record| &record.windows);
-    let span = windows.fold(None, |span: Option<(_, _)>, window| {
-        let (start, end) = span.unwrap_or((window.start, window.end));
-        Some((start.min(window.start), end.max(window.end)))
-    });
     let sites: Vec<&str> = input.sites.iter().map(|site| site.id.as_str()).collect();
-    let span = span.map_or(String::new(), |(start, end)| {
-        format!("; {} to {}", crate::report::iso_date(start.0), crate::report::iso_date(end.0))
+    let span = input.matched.span().map_or_else(String::new, |span| {
+        format!("; {} to {}", crate::report::iso_date(span.start.0), crate::report::iso_date(span.end.0))
     });
     format!("Level against wind speed; sites {}{span}", sites.join(", "))
 }
@@ -213,40 +209,16 @@ fn class_table(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Table {
     }
 }
 
-fn methods_section(input: &ReportInput<'_>) -> Section {
-    let matching = &input.study.matching;
-    let statistic = match matching.statistic {
-        LevelStatistic::Median => "the median of its samples",
-        LevelStatistic::PowerMean => "the level of the mean power of its samples",
-    };
-    let window = match matching.window_s {
-        Some(seconds) => {
-            format!("Level samples are gathered into windows of {seconds} s; a window's level is {statistic}.")
-        }
-        None => "Each level stands for its own window, as the table states it.".to_owned(),
-    };
-    let speed = match matching.wind_speed {
-        WindowSpeed::SpeedMean => "the mean over the window of the speed of the interpolated components",
-        WindowSpeed::SpeedOfMean => "the speed of the mean components of the window",
-        WindowSpeed::ScalarSpeedMean => "the mean over the window of the speed interpolated in space as a scalar",
-    };
-    let relation = &input.study.relation;
-    let blocks = vec![
-        Block::Method {
-            title: "How the wind over a window was found".into(),
-            text: vec![
-                format!("Wind components are interpolated in space at each model step ({}), and run linearly from step to step, never across a gap longer than the limit of the source. The mean over the half-open window [start, end) is the exact integral. The fit uses {speed}.", matching.spatial_words()),
-                window,
-            ],
-        },
-        Block::Method {
-            title: "How floor, slope and onset were estimated".into(),
-            text: vec![
-                "Per band, the mean square pressure is the sum of a floor and a wind part; the wind part rises by the slope per factor ten in wind speed and stays constant above the onset. Levels are averaged by classes of the logarithm of wind speed, with a loss that limits the weight of outliers; the onset is found by a profile over all onsets that the winds of the record allow.".into(),
-                relation.words(),
-            ],
-        },
-    ];
+fn methods_section(methods: &Methods) -> Section {
+    let mut blocks: Vec<Block> = methods
+        .sections
+        .iter()
+        .map(|(title, text)| Block::Method { title: (*title).to_owned(), text: text.clone() })
+        .collect();
+    blocks.push(Block::Text(
+        "References. Check them against the originals before printing; methods.md holds this text for editing.".into(),
+    ));
+    blocks.push(Block::Points(methods.references.iter().map(|reference| (*reference).to_owned()).collect()));
     Section::new("How each number was made", blocks)
 }
 
