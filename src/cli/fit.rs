@@ -17,6 +17,7 @@ pub(super) fn fit(args: &FitArgs, terminal: &Terminal) -> Result<(), Ending> {
     if let Some(path) = &args.study {
         let mut study = read_study(path)?;
         set(args, &mut study.relation.options)?;
+        study.relation.screen |= args.screen;
         if let Some(output) = &args.output {
             study.output.clone_from(output);
         }
@@ -51,7 +52,7 @@ pub(super) fn fit(args: &FitArgs, terminal: &Terminal) -> Result<(), Ending> {
     for note in &pairs.notes {
         terminal.remark(note);
     }
-    let fitted = pipeline::fit_pairs(&pairs, &options);
+    let fitted = pipeline::fit_pairs(&pairs, &options, args.screen);
     if let Some(folder) = &args.output {
         pipeline::make_folder(folder)?;
         pipeline::write_relations(&fitted, &[TableFormat::Parquet, TableFormat::Csv], folder)?;
@@ -67,6 +68,14 @@ fn set(args: &FitArgs, options: &mut Options) -> Result<(), Ending> {
     }
     if let Some(seed) = args.seed {
         options.seed = seed;
+    }
+    if let Some(sd) = args.wind_error_sd {
+        if !(0.0..=75.0).contains(&sd) {
+            return Err(
+                Error::CommandLine(format!("--wind-error-sd {sd} is not possible; expected 0 to 75 m/s")).into()
+            );
+        }
+        options.wind_error_sd_m_s = Some(sd).filter(|sd| *sd > 0.0);
     }
     match args.loss.as_deref() {
         Some("tukey") => options.loss = Loss::Tukey,

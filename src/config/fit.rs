@@ -1,6 +1,7 @@
 //! `[relation]`: how level is fitted against wind speed.
 
 use super::error::{Complaint, StudyError};
+use super::place::WindSpeedMS;
 use crate::science::level_wind::{KeepReplicates, Loss, Options, ScatterModel, Segments};
 use serde::{Deserialize, Serialize};
 use toml::Spanned;
@@ -18,6 +19,8 @@ pub(super) struct RawRelation {
     replicates: Option<Spanned<usize>>,
     seed: Option<u64>,
     keep_replicates: Option<bool>,
+    screen: Option<bool>,
+    wind_error_sd_m_s: Option<WindSpeedMS>,
 }
 
 /// `[relation]` with its defaults.
@@ -25,6 +28,8 @@ pub(super) struct RawRelation {
 pub struct RelationSection {
     /// The choices of the fit.
     pub options: Options,
+    /// Whether short events that raise most bands at once are left out.
+    pub screen: bool,
 }
 
 impl RawRelation {
@@ -49,8 +54,9 @@ impl RawRelation {
                 replicates,
                 seed: self.seed.unwrap_or(defaults.seed),
                 keep_replicates,
-                wind_error_sd_m_s: defaults.wind_error_sd_m_s,
+                wind_error_sd_m_s: self.wind_error_sd_m_s.map(|sd| sd.0).filter(|sd| *sd > 0.0),
             },
+            screen: self.screen.unwrap_or(false),
         })
     }
 }

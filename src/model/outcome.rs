@@ -66,6 +66,7 @@ causes! {
         DuplicateRow = "duplicate_row": "the same site, band and window came before; the first one counts",
         OutsideDeployment = "outside_deployment": "the time lies outside the sensor's deployment",
         UnknownSite = "unknown_site": "the table names a site that the study does not have",
+        ShortEvent = "short_event": "the level is raised in most bands at once for a few hours, as by a passing ship; the screen (`relation.screen`) leaves it out",
         Excluded = "excluded": "an exclusion rule of the study applies",
         NoWind = "no_wind": "there is no wind for the window",
         NoValue = "no_value": "the wind table has no value at this step",

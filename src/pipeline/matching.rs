@@ -9,9 +9,10 @@ use crate::io::levels::LevelNames;
 use crate::io::table::{TableWriter, write_dictionary};
 use crate::io::wind_table::read_wind_table;
 use crate::model::{
-    BandLevels, Conditions, LevelKind, LevelRow, Missing, SensorRecord, Site, Table, WindSeries, pair_reason,
+    BandLevels, Conditions, LevelKind, LevelRow, Missing, Screened, SensorRecord, Site, Table, WindSeries, pair_reason,
 };
 use crate::report::columns::{conditions_table, matchups_table, sampled_table};
+use crate::science::level_wind::{ScreenOptions, screen_short_events};
 use crate::science::matchup::{BandNumber, LevelWindows, SensorKey, wind_over_windows};
 use crate::units::Window;
 use std::collections::BTreeMap;
@@ -29,6 +30,8 @@ pub struct Matched {
     pub series: Vec<WindSeries>,
     /// For each record, the wind of each source over its windows.
     pub conditions: Vec<Vec<Conditions>>,
+    /// For each record, what the screen for short events found; empty where it is off.
+    pub screened: Vec<Screened>,
     /// How many pairs and rows are used, and why others are not.
     pub counts: Counts,
     /// What the reader should know.
@@ -51,6 +54,12 @@ impl Matched {
     pub fn span(&self) -> Option<Window> {
         span(&self.records)
     }
+
+    /// What the screen for short events found at a sensor; `None` where it is off.
+    pub(super) fn screened_at(&self, record: &SensorRecord) -> Option<Screened> {
+        let same = |(known, _): &(&SensorRecord, &Screened)| known.site == record.site && known.sensor == record.sensor;
+        self.records.iter().zip(&self.screened).find(same).map(|(_, screened)| *screened)
+    }
 }
 
 fn span(records: &[SensorRecord]) -> Option<Window> {
@@ -72,7 +81,8 @@ pub fn bring_together(study: &Study, inputs: &Inputs, progress: &dyn Progress) -
     }
     let mut counts = Counts::default();
     let mut remarks = inputs.remarks.clone();
-    let records = gather_levels(study, inputs, &mut counts, &mut remarks, progress)?;
+    let mut records = gather_levels(study, inputs, &mut counts, &mut remarks, progress)?;
+    let screened = if study.relation.screen { records.iter_mut().map(screen).collect() } else { Vec::new() };
     let whole = span(&records);
     let mut series = Vec::new();
     for wind in &inputs.wind {
@@ -97,7 +107,7 @@ pub fn bring_together(study: &Study, inputs: &Inputs, progress: &dyn Progress) -
         }
     }
     count_pairs(&records, &conditions, &mut counts);
-    let matched = Matched { records, series, conditions, counts, remarks };
+    let matched = Matched { records, series, conditions, screened, counts, remarks };
     if matched.counts.used == 0 {
         return Err(nothing_in_common(inputs, &matched, whole));
     }
@@ -242,6 +252,28 @@ fn wind_series(
     }
 }
 
+/// Marks the levels of short events as not used; their numbers stay.
+fn screen(record: &mut SensorRecord) -> Screened {
+    let times_ms: Vec<i64> = record.windows.iter().map(|window| window.centre().0).collect();
+    let usable = |band: &BandLevels| -> Vec<f64> {
+        let level = |(level, reason): (&f64, &Option<Missing>)| if reason.is_none() { *level } else { f64::NAN };
+        band.level_db.iter().zip(&band.reason).map(level).collect()
+    };
+    let levels: Vec<Vec<f64>> = record.bands.iter().map(usable).collect();
+    let columns: Vec<&[f64]> = levels.iter().map(Vec::as_slice).collect();
+    let events = screen_short_events(&times_ms, &columns, &ScreenOptions::default());
+    for band in &mut record.bands {
+        for (reason, _) in band.reason.iter_mut().zip(&events.marked).filter(|(_, marked)| **marked) {
+            reason.get_or_insert(Missing::ShortEvent);
+        }
+    }
+    Screened {
+        events: events.events,
+        windows: events.marked.iter().filter(|marked| **marked).count(),
+        kept_windows: events.kept_rows,
+    }
+}
+
 fn count_pairs(records: &[SensorRecord], conditions: &[Vec<Conditions>], counts: &mut Counts) {
     for (record, sources) in records.iter().zip(conditions) {
         for conditions in sources {
@@ -271,6 +303,20 @@ pub(super) fn reason_of_pair(
 pub(super) fn used_levels_db(record: &SensorRecord, conditions: &Conditions) -> Vec<Vec<f64>> {
     let level = |band: &BandLevels, k: usize| match reason_of_pair(record, band, conditions, k) {
         None => band.level_db[k],
+        Some(_) => f64::NAN,
+    };
+    record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()
+}
+
+/// As [`used_levels_db`], with the levels that the screen for short events left out.
+pub(super) fn with_short_events_db(record: &SensorRecord, conditions: &Conditions) -> Vec<Vec<f64>> {
+    let level = |band: &BandLevels, k: usize| match reason_of_pair(record, band, conditions, k) {
+        None => band.level_db[k],
+        Some(Missing::ShortEvent)
+            if record.deployment[k].is_some() && conditions.missing[k].is_none() && band.level_db[k].is_finite() =>
+        {
+            band.level_db[k]
+        }
         Some(_) => f64::NAN,
     };
     record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()

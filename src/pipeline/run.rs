@@ -9,7 +9,7 @@ use super::reporting::{ReportInput, write_report};
 use super::sensitivity::{refit_all, write_sensitivity};
 use crate::Error;
 use crate::config::Study;
-use crate::model::{FittedBand, Refit};
+use crate::model::{Fitted, Refit};
 use std::path::{Path, PathBuf};
 
 /// What is written.
@@ -31,7 +31,7 @@ pub enum Stage {
 #[derive(Debug)]
 pub struct Outcome {
     /// The relations; empty for `Stage::Match`.
-    pub fitted: Vec<FittedBand>,
+    pub fitted: Fitted,
     /// How many pairs and rows were used.
     pub counts: Counts,
     /// Remarks.
@@ -58,13 +58,13 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     if matches!(stage, Stage::Match | Stage::Everything) {
         written.extend(write_tables(study, &matched, &study.output, progress)?);
     }
-    let fitted = if stage == Stage::Match { Vec::new() } else { fit_matched(study, &matched, progress) };
+    let fitted = if stage == Stage::Match { Fitted::default() } else { fit_matched(study, &matched, progress) };
     if matches!(stage, Stage::Fit | Stage::Sensitivity | Stage::Everything) {
         written.extend(write_relations(&fitted, &study.tables, &study.output)?);
     }
     let mut refits = Vec::new();
     if stage == Stage::Sensitivity {
-        let (all, remarks) = refit_all(study, &inputs, &matched, &fitted, progress)?;
+        let (all, remarks) = refit_all(study, &inputs, &matched, &fitted.bands, progress)?;
         written.extend(write_sensitivity(study, &all, &study.output)?);
         matched.remarks.extend(remarks);
         refits = all;

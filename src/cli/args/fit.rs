@@ -59,6 +59,13 @@ pub(crate) struct FitArgs {
     /// Loss: how residuals count
     #[arg(long, value_name = "LOSS", value_parser = ["tukey", "huber", "least_squares"])]
     pub(crate) loss: Option<String>,
+    /// Leave out short events (a few hours) that raise most bands at once, such as passing ships; the relation with them is
+    /// kept beside
+    #[arg(long)]
+    pub(crate) screen: bool,
+    /// Show, beside the plain estimates, those for a random error of the wind speed of this standard deviation, m/s
+    #[arg(long, value_name = "SD")]
+    pub(crate) wind_error_sd: Option<f64>,
     /// Folder for the outputs [default: the study's `output`; none with --matchups]
     #[arg(long, short, value_name = "FOLDER")]
     pub(crate) output: Option<PathBuf>,

@@ -2,7 +2,7 @@
 
 use super::words::{estimate, file_part, level_label, onset, reference};
 use super::{Pairing, Placed, ReportInput, deployment_labels};
-use crate::model::{BandLevels, FittedBand, Track};
+use crate::model::{BandLevels, FittedBand, Missing, SensorRecord, Track};
 use crate::numerics::quantile::quantiles;
 use crate::report::{
     AgainstFrequency, Coverage, CoverageKind, CoverageRow, CoverageSpan, CurvePoint, Estimate, FrequencyPanel,
@@ -267,7 +267,7 @@ fn time_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, title: &str) -> Ti
                     .collect(),
             },
         ],
-        shaded: outside_deployments(pairing),
+        shaded: left_out(pairing),
     }
 }
 
@@ -291,17 +291,25 @@ fn chosen_bands(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<usize> {
         .collect()
 }
 
-fn outside_deployments(pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
+/// Periods that do not go into the fit, each with its reason.
+fn left_out(pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
     let record = pairing.record;
+    let mut shaded = periods(record, "outside the sensor's deployments", |k| record.deployment[k].is_none());
+    shaded.extend(periods(record, "short events, screened out", |k| {
+        record.bands.iter().any(|band| band.reason[k] == Some(Missing::ShortEvent))
+    }));
+    shaded
+}
+
+/// Runs of windows of which something holds.
+fn periods(record: &SensorRecord, reason: &str, holds: impl Fn(usize) -> bool) -> Vec<ShadedPeriod> {
     let mut shaded: Vec<ShadedPeriod> = Vec::new();
-    for (window, _) in record.windows.iter().zip(&record.deployment).filter(|(_, deployment)| deployment.is_none()) {
+    for (_, window) in record.windows.iter().enumerate().filter(|(k, _)| holds(*k)) {
         match shaded.last_mut() {
             Some(last) if last.end_ms == window.start.0 => last.end_ms = window.end.0,
-            _ => shaded.push(ShadedPeriod {
-                start_ms: window.start.0,
-                end_ms: window.end.0,
-                reason: "outside the sensor's deployments".into(),
-            }),
+            _ => {
+                shaded.push(ShadedPeriod { start_ms: window.start.0, end_ms: window.end.0, reason: reason.to_owned() })
+            }
         }
     }
     shaded

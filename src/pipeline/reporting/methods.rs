@@ -35,7 +35,7 @@ pub(super) fn methods(input: &ReportInput<'_>) -> Methods {
         ("Levels", vec![levels(input)]),
         ("Wind", wind(input.study)),
         ("Pairs of wind and level", vec![pairs(input)]),
-        ("Relation", vec![law(input.fitted, input.study), estimation(options.loss)]),
+        ("Relation", vec![law(&input.fitted.bands, input.study), estimation(options.loss)]),
     ];
     let mut references: Vec<&'static str> = STANDARDS.to_vec();
     match options.loss {
@@ -46,7 +46,7 @@ pub(super) fn methods(input: &ReportInput<'_>) -> Methods {
     if options.replicates == 0 {
         sections.push(("Uncertainty", vec!["No intervals were computed, and no onset is claimed.".to_owned()]));
     } else {
-        sections.push(("Uncertainty", vec![intervals(input), onsets(input.fitted)]));
+        sections.push(("Uncertainty", vec![intervals(input), onsets(&input.fitted.bands)]));
         references.extend(BOOTSTRAP);
         references.push(HOLM);
     }
@@ -110,8 +110,8 @@ fn wind(study: &Study) -> Vec<String> {
         .wind
         .iter()
         .map(|wind| match &wind.origin {
-            WindOrigin::Grid { files, .. } => format!("gridded 10 m wind `{}` ({} files)", wind.id, files.len()),
-            WindOrigin::Table { files, .. } => format!("wind `{}` from {} tables", wind.id, files.len()),
+            WindOrigin::Grid { files, .. } => format!("gridded 10 m wind `{}` ({})", wind.id, files_text(files.len())),
+            WindOrigin::Table { files, .. } => format!("wind `{}` from tables ({})", wind.id, files_text(files.len())),
         })
         .collect();
     let speed = match study.matching.wind_speed {
@@ -124,6 +124,10 @@ fn wind(study: &Study) -> Vec<String> {
         sources.join(" and "),
         study.matching.spatial_words()
     )]
+}
+
+fn files_text(count: usize) -> String {
+    if count == 1 { "one file".to_owned() } else { format!("{count} files") }
 }
 
 fn pairs(input: &ReportInput<'_>) -> String {
@@ -184,12 +188,11 @@ fn range(numbers: impl Iterator<Item = f64>, decimals: usize) -> String {
     match (sorted.first(), sorted.last()) {
         (Some(low), Some(high)) => {
             let middle = sorted[sorted.len() / 2];
-            format!(
-                "{} to {}, median {}",
-                number::fixed(*low, decimals),
-                number::fixed(*high, decimals),
-                number::fixed(middle, decimals)
-            )
+            let shown = |value: f64| number::fixed(value, decimals);
+            if shown(*low) == shown(*high) {
+                return shown(*low);
+            }
+            format!("{} to {}, median {}", shown(*low), shown(*high), shown(middle))
         }
         _ => "not known".to_owned(),
     }
@@ -197,7 +200,7 @@ fn range(numbers: impl Iterator<Item = f64>, decimals: usize) -> String {
 
 fn intervals(input: &ReportInput<'_>) -> String {
     let options = &input.study.relation.options;
-    let diagnostics = || input.fitted.iter().map(|band| &band.relation.diagnostics);
+    let diagnostics = || input.fitted.bands.iter().map(|band| &band.relation.diagnostics);
     format!(
         "Intervals are 95 % intervals from {} replicates of a circular moving-block bootstrap over time (Künsch 1989; seed {}), with blocks of twice the automatic length of Politis and White (2004): {} h. The bands of a sensor share the same draws. Pairs are not independent: the effective number of pairs per band was {} (pairs used per band: {}). Intervals are statistical and do not contain the calibration of the sensors. Mean residuals by hour, month and wind direction were tested with the correction of Holm (1979).",
         options.replicates,

@@ -12,7 +12,7 @@ use super::provenance::InputRecord;
 use crate::Error;
 use crate::config::Study;
 use crate::io::replace_file::replace_with;
-use crate::model::{Conditions, FittedBand, SensorRecord, Site};
+use crate::model::{Conditions, Fitted, FittedBand, FittedSensor, SensorRecord, Site};
 use crate::report::{Figure, html};
 use rayon::prelude::*;
 use std::path::{Path, PathBuf};
@@ -30,7 +30,7 @@ pub(super) struct ReportInput<'a> {
     /// Levels and wind brought together.
     pub matched: &'a Matched,
     /// The relations.
-    pub fitted: &'a [FittedBand],
+    pub fitted: &'a Fitted,
     /// The input files.
     pub inputs: &'a [InputRecord],
 }
@@ -39,7 +39,9 @@ pub(super) struct ReportInput<'a> {
 struct Pairing<'a> {
     record: &'a SensorRecord,
     conditions: &'a Conditions,
-    fitted: Vec<&'a FittedBand>,
+    fitted: &'a [FittedBand],
+    /// What was found over its bands together.
+    sensor: Option<&'a FittedSensor>,
     /// The wind speed that the fit used, one entry a window, m/s.
     wind_m_s: Vec<f64>,
     /// Levels of each band, one entry a window, dB; NaN where the pair is not used.
@@ -108,15 +110,19 @@ fn pairings<'a>(input: &'a ReportInput<'a>) -> Vec<Pairing<'a>> {
     for wind in &input.study.wind {
         for (record, sources) in input.matched.records.iter().zip(&input.matched.conditions) {
             let Some(conditions) = sources.iter().find(|conditions| conditions.source == wind.id) else { continue };
-            let fitted = input
+            let bands = &input.fitted.bands;
+            let of_pairing = |f: &FittedBand| f.source == wind.id && f.site == record.site && f.sensor == record.sensor;
+            let first = bands.iter().position(of_pairing).unwrap_or(bands.len());
+            let fitted = &bands[first..first + bands[first..].iter().take_while(|band| of_pairing(band)).count()];
+            let sensor = input
                 .fitted
+                .sensors
                 .iter()
-                .filter(|f| f.source == wind.id && f.site == record.site && f.sensor == record.sensor)
-                .collect();
+                .find(|f| f.source == wind.id && f.site == record.site && f.sensor == record.sensor);
             let which = input.study.matching.wind_speed;
             let wind_m_s = conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), which)).collect();
             let levels_db = used_levels_db(record, conditions);
-            pairings.push(Pairing { record, conditions, fitted, wind_m_s, levels_db });
+            pairings.push(Pairing { record, conditions, fitted, sensor, wind_m_s, levels_db });
         }
     }
     pairings

@@ -4,9 +4,9 @@ use super::figures::{percentiles, wind_classes};
 use super::methods::Methods;
 use super::words::{estimate, reference};
 use super::{Pairing, Placed, ReportInput};
-use crate::model::{FittedBand, Missing, RelationWarning, Verdict};
+use crate::model::{FittedBand, Missing, RelationWarning, Verdict, WindErrorEstimate};
 use crate::pipeline::provenance::PROGRAM;
-use crate::report::{Block, Column, Document, Section, Table, number};
+use crate::report::{Block, Column, Document, Section, Table, findings, number, p_text};
 
 /// Said on every page: what the numbers are not.
 const CAUTION: &str = "These results describe levels at the sensors and their relation to modelled wind. They are no assessment of impact on animals or people and no aid to navigation: for such decisions the applicable rules and standards, and qualified people, come first.";
@@ -46,8 +46,9 @@ fn subtitle(input: &ReportInput<'_>) -> String {
 fn summary(input: &ReportInput<'_>) -> Vec<String> {
     let counts = &input.matched.counts;
     let unused: u64 = counts.not_used.values().sum();
-    let count = |verdicts: &[Verdict]| input.fitted.iter().filter(|f| verdicts.contains(&f.relation.verdict)).count();
-    let total = input.fitted.len();
+    let count =
+        |verdicts: &[Verdict]| input.fitted.bands.iter().filter(|f| verdicts.contains(&f.relation.verdict)).count();
+    let total = input.fitted.bands.len();
     let mut sentences = vec![format!(
         "{} pairs of wind and level are used, {} are not.",
         number::count(counts.used as usize),
@@ -105,10 +106,21 @@ fn pairing_section(input: &ReportInput<'_>, pairing: &Pairing<'_>, figures: Vec<
     let record = pairing.record;
     let title = format!("Site {}, sensor {}, wind {}", record.site, record.sensor, pairing.conditions.source);
     let mut section = Section::new(&title, vec![Block::Table(relation_table(pairing))]);
-    let warnings = warnings(&pairing.fitted);
+    let warnings = warnings(pairing.fitted);
     if !warnings.is_empty() {
         section.blocks.push(Block::Text("Remarks on the relations:".into()));
         section.blocks.push(Block::Points(warnings));
+    }
+    let findings = findings(pairing.fitted, pairing.sensor);
+    if !findings.is_empty() {
+        section.blocks.push(Block::Text("Over the bands together:".into()));
+        section.blocks.push(Block::Points(findings));
+    }
+    if pairing.fitted.iter().any(|fitted| fitted.relation.diagnostics.replicates > 0) {
+        section.blocks.push(Block::Table(checks_table(pairing)));
+    }
+    if pairing.fitted.iter().any(|fitted| !fitted.checks.wind_error.is_empty()) {
+        section.blocks.push(Block::Table(wind_error_table(pairing)));
     }
     let mut details = Section::new("Band by band", Vec::new());
     // The first figures show the sensor as a whole; the others one band each.
@@ -162,12 +174,84 @@ fn relation_table(pairing: &Pairing<'_>) -> Table {
     }
 }
 
+/// Tests and checks beside the relations.
+fn checks_table(pairing: &Pairing<'_>) -> Table {
+    let p = |p: Option<f64>| p.map_or_else(|| "–".to_owned(), |p| p_text(p).trim_start_matches("= ").to_owned());
+    let fixed = |value: Option<f64>, decimals| value.map_or_else(|| "–".to_owned(), |v| number::fixed(v, decimals));
+    let rows = pairing
+        .fitted
+        .iter()
+        .map(|fitted| {
+            let (diagnostics, checks) = (&fitted.relation.diagnostics, &fitted.checks);
+            vec![
+                unbroken(&fitted.band_label()),
+                diagnostics.effective_samples.map_or_else(|| "–".to_owned(), |n| number::count(n.round() as usize)),
+                fixed(diagnostics.block_length_h, 0),
+                p(diagnostics.p_slope),
+                p(diagnostics.p_floor),
+                p(diagnostics.p_onset),
+                p(checks.p_onset_false_discovery),
+                checks.drift_db_per_year.map_or_else(|| "–".to_owned(), |drift| estimate(drift).text("", 1)),
+                fixed(checks.lag.map(|lag| lag.lag_h), 1),
+                fixed(diagnostics.residual_scale_ratio, 2),
+            ]
+        })
+        .collect();
+    Table {
+        caption: "Tests and checks".into(),
+        columns: vec![
+            Column::row_name("band"),
+            Column::number("effective pairs", ""),
+            Column::number("block", "h"),
+            Column::number("p, no rise", ""),
+            Column::number("p, no floor", ""),
+            Column::number("p, no onset", ""),
+            Column::number("over bands", "false discovery"),
+            Column::number("drift", "dB per year"),
+            Column::number("lag", "h"),
+            Column::number("scale ratio", "strong to weak wind"),
+        ],
+        rows,
+        note: "Over bands: p of no onset, corrected for the number of bands (Benjamini and Yekutieli). Drift: trend of the residuals. Lag: by which the level follows the wind; 0 unless another lag predicts held-out blocks of time better by two standard errors. Scale ratio: residual scale in the upper third of the winds over that in the lower third.".into(),
+    }
+}
+
+/// Plain estimates beside those for an error of the wind.
+fn wind_error_table(pairing: &Pairing<'_>) -> Table {
+    let sizes = pairing.fitted.iter().find(|fitted| !fitted.checks.wind_error.is_empty());
+    let sizes = sizes.map_or(&[] as &[WindErrorEstimate], |fitted| &fitted.checks.wind_error);
+    let mut columns = vec![Column::row_name("band")];
+    for (name, unit) in [("floor", "dB"), ("slope", "dB per decade"), ("knee", "m/s")] {
+        columns.extend(sizes.iter().map(|size| {
+            let error = number::fixed(size.wind_error_sd_m_s, 2);
+            Column::number(
+                &if size.wind_error_sd_m_s > 0.0 { format!("{name}, {error} m/s") } else { name.to_owned() },
+                unit,
+            )
+        }));
+    }
+    let rows = pairing.fitted.iter().map(|fitted| {
+        let each = &fitted.checks.wind_error;
+        let mut row = vec![unbroken(&fitted.band_label())];
+        row.extend(each.iter().map(|e| number::fixed(e.floor_db.first().copied().unwrap_or(f64::NAN), 1)));
+        row.extend(each.iter().map(|e| number::fixed(e.slope_db_per_decade, 1)));
+        row.extend(each.iter().map(|e| number::fixed(e.onset_m_s, 1)));
+        row
+    });
+    Table {
+        caption: "Estimates as if the wind speed had a random error".into(),
+        columns,
+        rows: rows.collect(),
+        note: "Fit with floor and knee, whatever the verdict: plain, and for an error of 0.75, 1 and 1.25 times the stated standard deviation. The size of the error cannot be found from these pairs.".into(),
+    }
+}
+
 /// A number and its unit that stay on one line.
 fn unbroken(text: &str) -> String {
     text.replace(' ', "\u{a0}")
 }
 
-fn warnings(fitted: &[&FittedBand]) -> Vec<String> {
+fn warnings(fitted: &[FittedBand]) -> Vec<String> {
     RelationWarning::ALL
         .iter()
         .filter_map(|warning| {

@@ -66,6 +66,10 @@ pub(super) fn trials(study: &Study, grounds: &Grounds) -> Vec<Trial> {
         other.matching.statistic = statistic;
         add("level of the window", taken.to_owned(), Change::Match(Box::new(other)));
     }
+    let mut other = study.clone();
+    other.relation.screen = !study.relation.screen;
+    let taken = if study.relation.screen { "left in" } else { "screened out" };
+    add("short events", taken.to_owned(), Change::Match(Box::new(other)));
     for lag in [-1, 1] {
         let taken = if lag > 0 { "level one window after the wind" } else { "level one window before the wind" };
         add("lag", taken.to_owned(), Change::Lag(lag));

@@ -3,7 +3,7 @@
 mod choices;
 mod figures;
 
-use super::fitting::{fit_conditions, fit_matched};
+use super::fitting::fit_conditions;
 use super::inputs::Inputs;
 use super::matching::{Matched, Output, bring_together};
 use super::progress::{Progress, Silent};
@@ -74,11 +74,6 @@ pub(super) fn refit_all(
 
 /// The fit of the study's first wind source, with its wind moved by a number of windows.
 fn fit_first(study: &Study, matched: &Matched, lag_windows: i32) -> Vec<FittedBand> {
-    if lag_windows == 0 {
-        let mut one = study.clone();
-        one.wind.truncate(1);
-        return fit_matched(&one, matched, &Silent);
-    }
     let mut fitted = Vec::new();
     for (record, sources) in matched.records.iter().zip(&matched.conditions) {
         if let Some(conditions) = sources.iter().find(|conditions| conditions.source == study.wind[0].id) {

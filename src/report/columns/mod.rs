@@ -1,5 +1,6 @@
 //! Results as plain tables: names with units, and one sentence of meaning for each column.
 
+mod checks;
 mod conditions;
 mod matchups;
 mod relation;
@@ -7,6 +8,7 @@ mod sampled;
 mod sensitivity;
 mod spreading;
 
+pub use checks::{bands_together_table, wind_error_table};
 pub use conditions::conditions_table;
 pub use matchups::matchups_table;
 pub use relation::relation_table;

@@ -139,6 +139,13 @@ pub fn relation_table(fitted: &[FittedBand]) -> Table {
         number(&|row| row.relation.diagnostics.block_length_h),
     );
     table.push("p_onset", "1", "p value of the test against no onset", number(&|row| row.relation.diagnostics.p_onset));
+    table.push(
+        "p_onset_false_discovery",
+        "1",
+        "the same, corrected for the number of bands of the sensor (Benjamini and Yekutieli)",
+        number(&|row| row.checks.p_onset_false_discovery),
+    );
+    table.push("p_slope", "1", "p value of the test against no rise", number(&|row| row.relation.diagnostics.p_slope));
     table.push("p_floor", "1", "p value of the test against no floor", number(&|row| row.relation.diagnostics.p_floor));
     table.push(
         "least_wind_m_s",
@@ -152,6 +159,7 @@ pub fn relation_table(fitted: &[FittedBand]) -> Table {
         "greatest wind speed used",
         number(&|row| row.relation.diagnostics.greatest_wind_m_s),
     );
+    push_checks(&mut table, fitted);
     table.push(
         "scatter",
         "",
@@ -171,6 +179,60 @@ pub fn relation_table(fitted: &[FittedBand]) -> Table {
         text(&|row| row.relation.warnings.iter().copied().map(RelationWarning::name).collect::<Vec<_>>().join(" ")),
     );
     table
+}
+
+fn push_checks(table: &mut Table, fitted: &[FittedBand]) {
+    let number = |pick: &dyn Fn(&FittedBand) -> Option<f64>| {
+        ColumnData::Number(fitted.iter().map(|row| pick(row).unwrap_or(f64::NAN)).collect())
+    };
+    table.push(
+        "drift_db_per_year",
+        "dB a-1",
+        "linear trend of the residuals",
+        number(&|row| row.checks.drift_db_per_year?.estimate()),
+    );
+    table.push(
+        "drift_low_db_per_year",
+        "dB a-1",
+        "lower end of its 95 % interval",
+        number(&|row| Some(row.checks.drift_db_per_year?.interval()?.0)),
+    );
+    table.push(
+        "drift_high_db_per_year",
+        "dB a-1",
+        "upper end of its 95 % interval",
+        number(&|row| Some(row.checks.drift_db_per_year?.interval()?.1)),
+    );
+    table.push(
+        "lag_h",
+        "h",
+        "hours by which the level follows the wind; 0 unless another lag predicts held-out blocks better by two standard errors",
+        number(&|row| Some(row.checks.lag?.lag_h)),
+    );
+    table.push(
+        "lag_gain_standard_errors",
+        "1",
+        "gain of the best other lag over none, in standard errors of paired blocks",
+        number(&|row| Some(row.checks.lag?.gain_in_standard_errors)),
+    );
+    table.push(
+        "unscreened_floor_db",
+        "dB",
+        "floor with short events left in, where the screen is on",
+        number(&|row| row.checks.unscreened.as_ref()?.floor_db.estimate()),
+    );
+    table.push(
+        "unscreened_slope_db_per_decade",
+        "dB",
+        "slope with short events left in",
+        number(&|row| row.checks.unscreened.as_ref()?.slope_db_per_decade.estimate()),
+    );
+    table.push(
+        "unscreened_onset_m_s",
+        "m s-1",
+        "onset with short events left in",
+        number(&|row| row.checks.unscreened.as_ref()?.onset_m_s.estimate()),
+    );
 }
 
 fn lower(value: &Resolved) -> Option<f64> {

@@ -1,24 +1,9 @@
 //! Several bands of a site together: one onset for all, and whether they have one.
 
-use crate::model::{Relation, Resolved, Verdict};
+use crate::model::{CommonOnset, Relation, Resolved, Verdict};
 use crate::numerics::quantile::quantiles;
 use crate::numerics::student_t::chi_squared_tail;
 use crate::numerics::symmetric::Symmetric;
-
-/// One onset for several bands.
-#[derive(Debug, Clone, PartialEq)]
-pub struct CommonOnset {
-    /// Index of each band that was used: those with a named onset and with replicates.
-    pub bands: Vec<usize>,
-    /// The common onset, m/s, with its 95 % interval.
-    pub onset_m_s: Resolved,
-    /// Wald statistic of equal onsets.
-    pub wald: f64,
-    /// Its degrees of freedom.
-    pub degrees: usize,
-    /// p value of equal onsets (chi-squared).
-    pub p_equal: f64,
-}
 
 /// Common onset by inverse variance over bands with a named onset, from replicates that share their draws (so the covariance
 /// between bands is kept), and a Wald test of equality. The relations must carry replicates

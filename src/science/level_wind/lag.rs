@@ -180,7 +180,8 @@ fn quick_fit(times_ms: &[i64], wind_m_s: &[f64], level_db: &[f64]) -> Option<(Ba
         level_db: medians,
         table: CornerTable::plain(1.0),
         least_floor_db: lowest - 20.0,
-        onsets: grid(low, high, 24),
+        // A lag shows long before the onset is sharp: a coarse profile will do.
+        onsets: grid(low, high, 8),
         record,
     };
     let begin = start::hinge(&band.record, &band.level_db);
@@ -216,7 +217,7 @@ fn block_losses(aligned: &Aligned, wind_m_s: &[f64], blocks: &[usize], count: us
             .map(|(level, fit)| fit + (level - fit).clamp(-2.0 * scale_db, 2.0 * scale_db))
             .collect();
         band.set_levels(cut);
-        let at = band.fit(Law::Knee, Corner::Floor, &at, Starts::AndLine).at;
+        let at = band.fit(Law::Knee, Corner::Floor, &at, Starts::Given).at;
         let form = band.form(Law::Knee, Corner::Floor).at_points();
         for row in (0..blocks.len()).filter(|&row| blocks[row] % FOLDS == fold) {
             let x = x_of(wind_m_s[row].max(LEAST_WIND_M_S));

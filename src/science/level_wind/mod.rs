@@ -33,10 +33,10 @@ mod summary;
 mod verdict;
 mod wind_error;
 
-pub use bands::{CommonOnset, common_onset};
+pub use bands::common_onset;
 pub use fit::{SiteRecord, fit_band, fit_site};
 pub use lag::{LagLoss, LagSearch, search_lag};
 pub use options::{KeepReplicates, Loss, Options, ScatterModel, Segments};
 pub use residuals::{ResidualClass, drift_db_per_year, residual_classes, residuals};
 pub use screen::{ScreenOptions, ScreenedEvents, screen_short_events};
-pub use wind_error::{WindErrorEstimate, correct_for_wind_error};
+pub use wind_error::correct_for_wind_error;

@@ -12,23 +12,9 @@ use super::options::Options;
 use super::point::{PointFit, check};
 use super::record::Record;
 use super::solve::{Form, RowMeans};
+use crate::model::WindErrorEstimate;
 use crate::numerics::quantile::quantile;
 use crate::numerics::symmetric::Symmetric;
-
-/// Estimates for one assumed size of the wind error.
-#[derive(Debug, Clone, PartialEq)]
-pub struct WindErrorEstimate {
-    /// Assumed standard deviation of the error, m/s; 0 for the plain estimate.
-    pub wind_error_sd_m_s: f64,
-    /// Floor of each deployment, dB.
-    pub floor_db: Vec<f64>,
-    /// Wind part alone at 10 m/s of each deployment, dB.
-    pub wind_component_at_10_m_s_db: Vec<f64>,
-    /// Slope, dB per decade.
-    pub slope_db_per_decade: f64,
-    /// Onset, m/s.
-    pub onset_m_s: f64,
-}
 
 /// Plain estimates of the fit with floor and knee, and the corrected ones for 0.75, 1 and 1.25 times
 /// `options.wind_error_sd_m_s`. `None` without that size, or where nothing can be fitted.

@@ -71,7 +71,7 @@ fn a_known_wind_error_is_taken_off() {
     let options = Options { wind_error_sd_m_s: Some(1.2), ..options() };
     let [plain, small, right, large] =
         correct_for_wind_error(&simulated.times_ms, &observed, &simulated.level_db, None, &options).unwrap();
-    let off = |estimate: &underwind::science::level_wind::WindErrorEstimate| {
+    let off = |estimate: &underwind::model::WindErrorEstimate| {
         (estimate.floor_db[0] - 60.0, estimate.slope_db_per_decade - 30.0, estimate.onset_m_s - 12.0)
     };
     assert!(off(&plain).0 > 0.5 && off(&plain).1 < -1.0, "{:?}", off(&plain));

@@ -7,3 +7,4 @@ mod independent;
 mod properties;
 mod simulator;
 mod study;
+mod through_the_program;

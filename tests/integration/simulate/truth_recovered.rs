@@ -16,7 +16,7 @@ fn fitted() -> &'static [FittedBand] {
         let folder = tempfile::tempdir().unwrap();
         let mut study = read_study(&project().join("demo-data/study.toml")).unwrap();
         study.output = folder.path().join("out");
-        run(&study, Stage::Fit, &Silent).unwrap().fitted
+        run(&study, Stage::Fit, &Silent).unwrap().fitted.bands
     })
 }
 

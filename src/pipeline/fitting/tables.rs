@@ -1,0 +1,52 @@
+//! The relations as tables and as JSON.
+
+use crate::Error;
+use crate::config::TableFormat;
+use crate::io::replace_file::replace_with;
+use crate::io::table::{TableWriter, write_dictionary};
+use crate::model::{Fitted, Table};
+use crate::report::columns::{bands_together_table, relation_table, wind_error_table};
+use std::path::{Path, PathBuf};
+
+/// Writes the relation tables in the study's formats, and the relations as JSON. Returns the files written.
+///
+/// # Errors
+/// When a file cannot be written.
+pub fn write_relations(fitted: &Fitted, formats: &[TableFormat], folder: &Path) -> Result<Vec<PathBuf>, Error> {
+    let mut written = write_table("relation", &relation_table(&fitted.bands), formats, folder)?;
+    let json = folder.join("relation.json");
+    replace_with(&json, relations_json(fitted).as_bytes())?;
+    written.push(json);
+    written.extend(write_table("bands_together", &bands_together_table(fitted), formats, folder)?);
+    if fitted.bands.iter().any(|band| !band.checks.wind_error.is_empty()) {
+        written.extend(write_table("wind_error", &wind_error_table(&fitted.bands), formats, folder)?);
+    }
+    Ok(written)
+}
+
+/// Writes a small table in each format, with its dictionary.
+fn write_table(name: &str, table: &Table, formats: &[TableFormat], folder: &Path) -> Result<Vec<PathBuf>, Error> {
+    let mut written = Vec::new();
+    for format in formats {
+        let extension = match format {
+            TableFormat::Parquet => "parquet",
+            TableFormat::Csv => "csv",
+        };
+        let path = folder.join(format!("{name}.{extension}"));
+        let mut writer = TableWriter::create(&path)?;
+        writer.append(table)?;
+        writer.finish()?;
+        written.push(path);
+    }
+    let dictionary = folder.join(format!("{name}_columns.csv"));
+    write_dictionary(&dictionary, table)?;
+    written.push(dictionary);
+    Ok(written)
+}
+
+/// The relations as JSON, complete: curves, diagnostics, wind classes, checks.
+pub fn relations_json(fitted: &Fitted) -> String {
+    let mut text = serde_json::to_string_pretty(&fitted.bands).expect("plain data is JSON");
+    text.push('\n');
+    text
+}
