@@ -15,7 +15,7 @@ mod study;
 mod wind;
 
 pub use error::StudyError;
-pub use fit::{RelationSection, check_replicates};
+pub use fit::{FloorBy, OffsetBy, RelationSection, SegmentBy, check_replicates, segment_choice};
 pub use levels::{LevelsInput, level_options_from};
 pub use matching::{MatchSection, WindowSpeed};
 pub use sites::SitesInput;

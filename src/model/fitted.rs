@@ -98,6 +98,8 @@ pub struct FittedSensor {
     pub sensor: String,
     /// One onset for all bands that have one.
     pub common_onset: Option<CommonOnset>,
+    /// Names of the segments (deployments, months) that relations number; empty where there is but one.
+    pub segments: Vec<String>,
     /// What the screen for short events found, where it is on.
     pub screen: Option<Screened>,
 }

@@ -322,13 +322,6 @@ pub(super) fn with_short_events_db(record: &SensorRecord, conditions: &Condition
     record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()
 }
 
-/// Deployment of each window as the fit wants it; `None` where there is but one.
-pub(super) fn deployment_labels(record: &SensorRecord) -> Option<Vec<u32>> {
-    // Windows outside all deployments have no used level; any label serves.
-    let label = |deployment: &Option<u32>| deployment.unwrap_or(0);
-    (record.deployments.len() > 1).then(|| record.deployment.iter().map(label).collect())
-}
-
 fn nothing_in_common(inputs: &Inputs, matched: &Matched, whole: Option<Window>) -> Error {
     let levels = whole.map_or_else(
         || "the level tables give no level at a site of the study".to_owned(),

@@ -1,6 +1,6 @@
 //! The relation as a short table for the terminal.
 
-use crate::model::{Fitted, FittedBand, FittedSensor, Resolved, WindErrorEstimate};
+use crate::model::{DeploymentDifference, Fitted, FittedBand, FittedSensor, Resolved, WindErrorEstimate};
 
 /// One line a band, grouped by source, site and sensor: floor, slope, onset, what the data say; then what was found over the
 /// bands together.
@@ -68,6 +68,7 @@ pub fn findings(bands: &[FittedBand], sensor: Option<&FittedSensor>) -> Vec<Stri
             drifting.join(", ")
         ));
     }
+    sentences.extend(segment_sentence(bands));
     if let Some(screen) = sensor.and_then(|sensor| sensor.screen) {
         sentences.push(format!(
             "screen: {} short events in {} windows left out, {} windows raised for longer kept; largest shifts without the screen: {}",
@@ -79,6 +80,26 @@ pub fn findings(bands: &[FittedBand], sensor: Option<&FittedSensor>) -> Vec<Stri
     }
     sentences.extend(wind_error_sentence(bands));
     sentences
+}
+
+/// How segments (deployments, months) differ, where the fit gives them parameters of their own.
+fn segment_sentence(bands: &[FittedBand]) -> Option<String> {
+    let differences: Vec<DeploymentDifference> =
+        bands.iter().filter_map(|band| band.relation.deployment_difference).collect();
+    let kinds: Vec<String> = DeploymentDifference::ALL
+        .iter()
+        .map(|kind| (kind, differences.iter().filter(|other| *other == kind).count()))
+        .filter(|(_, count)| *count > 0)
+        .map(|(kind, count)| format!("{} in {count}", kind.name()))
+        .collect();
+    let all = bands.len();
+    (!kinds.is_empty()).then(|| {
+        format!(
+            "segments of the record have parameters of their own in {} of {all} bands: {} (table segments)",
+            differences.len(),
+            kinds.join(", ")
+        )
+    })
 }
 
 /// What an error of the wind of the stated size would have done, over all bands; the table has each.

@@ -4,7 +4,7 @@
 //! samples with 1000 replicates.
 //!
 //! `cargo bench --bench fit -- study RUNS SAMPLES [FIRST_SEED [CASE...]]` runs the simulation study: RUNS seeds of every
-//! case from the first on (1001 where none is given), 400 replicates. It prints verdict shares, bias, root mean square
+//! case from the first on (2001 where none is given), 400 replicates. It prints verdict shares, bias, root mean square
 //! error, coverage, and the median interval width over 3.92 standard deviations of the estimates (the width that one who
 //! knew the distribution of the estimate would use). `STUDY.md` keeps what it printed.
 

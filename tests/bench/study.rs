@@ -6,8 +6,8 @@ use std::time::Instant;
 use underwind::model::{Relation, Resolved, Verdict};
 use underwind::science::level_wind::{Options, fit_band};
 
-/// The rules were chosen on seeds 1 to 400; the study is judged on others.
-const FRESH_SEED: u64 = 1001;
+/// The rules were chosen on seeds 1 to 1400; the study is judged on others.
+const FRESH_SEED: u64 = 2001;
 
 /// Names and truths.
 fn cases() -> Vec<(&'static str, Truth)> {

@@ -59,6 +59,15 @@ pub(crate) struct FitArgs {
     /// Loss: how residuals count
     #[arg(long, value_name = "LOSS", value_parser = ["tukey", "huber", "least_squares"])]
     pub(crate) loss: Option<String>,
+    /// Keep the bootstrap replicates, as the table `replicates`
+    #[arg(long)]
+    pub(crate) keep_replicates: bool,
+    /// Let every deployment have an offset in dB, which moves floor and wind part together
+    #[arg(long, value_name = "WHAT", value_parser = ["deployment"])]
+    pub(crate) offset_by: Option<String>,
+    /// Let every deployment or calendar month have a floor of its own
+    #[arg(long, value_name = "WHAT", value_parser = ["deployment", "month"])]
+    pub(crate) floor_by: Option<String>,
     /// Leave out short events (a few hours) that raise most bands at once, such as passing ships; the relation with them is
     /// kept beside
     #[arg(long)]

@@ -1,16 +1,18 @@
 //! `fit`: level against wind speed, per source, site, sensor and band.
 
 mod pairs;
+mod segments;
 mod tables;
 mod together;
 
 pub use pairs::fit_pairs;
 pub use tables::{relations_json, write_relations};
 
-use super::matching::{Matched, deployment_labels, used_levels_db, with_short_events_db};
+use super::matching::{Matched, used_levels_db, with_short_events_db};
 use super::progress::Progress;
 use crate::config::{Study, WindowSpeed};
 use crate::model::{Conditions, Fitted, FittedBand, FittedSensor, SensorRecord, WindowWind};
+pub(super) use segments::{SegmentLabels, segment_labels};
 use together::{Found, Together};
 
 /// The wind speed of a window that the fit uses, m/s; NaN where there is none.
@@ -65,12 +67,15 @@ fn together(study: &Study, record: &SensorRecord, conditions: &Conditions, lag_w
     let wind: Vec<f64> =
         conditions.wind.iter().map(|wind| wind_speed_m_s(wind.as_ref(), study.matching.wind_speed)).collect();
     let wind_m_s = if lag_windows == 0 { wind } else { lagged(&times_ms, &wind, lag_windows) };
-    Together {
-        times_ms,
-        wind_m_s,
-        deployment: deployment_labels(record),
-        levels_db: used_levels_db(record, conditions),
-    }
+    Together { times_ms, wind_m_s, segments: segments_of(study, record), levels_db: used_levels_db(record, conditions) }
+}
+
+/// The segments of a sensor's record, as the study has them.
+pub(super) fn segments_of(study: &Study, record: &SensorRecord) -> Option<SegmentLabels> {
+    let times_ms: Vec<i64> = record.windows.iter().map(|window| window.centre().0).collect();
+    let deployment =
+        (!record.deployments.is_empty()).then_some((record.deployment.as_slice(), record.deployments.as_slice()));
+    segment_labels(study.relation.segment_by, &times_ms, deployment)
 }
 
 fn add(fitted: &mut Fitted, record: &SensorRecord, conditions: &Conditions, found: Found) {
@@ -79,6 +84,7 @@ fn add(fitted: &mut Fitted, record: &SensorRecord, conditions: &Conditions, foun
         site: record.site.clone(),
         sensor: record.sensor.clone(),
         common_onset: found.common_onset,
+        segments: found.segments,
         screen: found.screen,
     });
     fitted.bands.extend(found.bands.into_iter().zip(&record.bands).map(|((relation, checks), band)| FittedBand {

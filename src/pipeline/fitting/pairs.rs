@@ -1,6 +1,8 @@
 //! `fit --matchups`: relations from a table of pairs of wind and level.
 
+use super::segments::{SegmentLabels, segment_labels};
 use super::together::{Found, Together};
+use crate::config::SegmentBy;
 use crate::io::table::{Pairs, TextColumn};
 use crate::model::{Band, Fitted, FittedBand, FittedSensor, SourceId};
 use crate::science::level_wind::Options;
@@ -8,7 +10,7 @@ use std::collections::BTreeMap;
 
 /// Fits a table of pairs of wind and level: each source, site and sensor by itself, its bands together; rows marked as not
 /// used are left out.
-pub fn fit_pairs(pairs: &Pairs, options: &Options, screen: bool) -> Fitted {
+pub fn fit_pairs(pairs: &Pairs, options: &Options, segment_by: SegmentBy, screen: bool) -> Fitted {
     let mut groups: BTreeMap<[&str; 3], BTreeMap<u64, Vec<usize>>> = BTreeMap::new();
     for row in 0..pairs.time_ms.len() {
         if pairs.used.as_ref().is_some_and(|used| !used[row]) {
@@ -21,15 +23,18 @@ pub fn fit_pairs(pairs: &Pairs, options: &Options, screen: bool) -> Fitted {
     }
     let mut fitted = Fitted::default();
     for ([source, site, sensor], bands) in groups {
-        let found = match bands_together(pairs, &bands) {
+        let found = match bands_together(pairs, &bands, segment_by) {
             Some(together) => together.fit_screened(options, screen),
-            None => Found::of_bands(bands.values().map(|rows| one_band(pairs, rows).fit_and_check(options))),
+            None => {
+                Found::of_bands(bands.values().map(|rows| one_band(pairs, rows, segment_by).fit_and_check(options)))
+            }
         };
         fitted.sensors.push(FittedSensor {
             source: SourceId(source.to_owned()),
             site: site.to_owned(),
             sensor: sensor.to_owned(),
             common_onset: found.common_onset,
+            segments: found.segments,
             screen: found.screen,
         });
         fitted.bands.extend(bands.keys().zip(found.bands).map(|(band, (relation, checks))| {
@@ -50,7 +55,7 @@ pub fn fit_pairs(pairs: &Pairs, options: &Options, screen: bool) -> Fitted {
 
 /// Bands of one sensor on one time line: then all share the same draws, and differences between bands can be judged.
 /// `None` when the bands do not agree on wind or deployment, or one has a time twice.
-fn bands_together(pairs: &Pairs, bands: &BTreeMap<u64, Vec<usize>>) -> Option<Together> {
+fn bands_together(pairs: &Pairs, bands: &BTreeMap<u64, Vec<usize>>, segment_by: SegmentBy) -> Option<Together> {
     let mut times: BTreeMap<i64, usize> = BTreeMap::new();
     for row in bands.values().flatten() {
         times.entry(pairs.time_ms[*row]).or_insert(*row);
@@ -73,20 +78,32 @@ fn bands_together(pairs: &Pairs, bands: &BTreeMap<u64, Vec<usize>>) -> Option<To
         }
         levels_db.push(levels);
     }
-    let deployment = pairs.deployment.as_ref().map(|column| times.values().map(|row| column.codes[*row]).collect());
-    let wind_m_s = times.values().map(|row| pairs.wind_speed_m_s[*row]).collect();
-    Some(Together { times_ms: times.into_keys().collect(), wind_m_s, deployment, levels_db })
+    let rows: Vec<usize> = times.values().copied().collect();
+    let times_ms: Vec<i64> = times.into_keys().collect();
+    let segments = segments(pairs, &rows, &times_ms, segment_by);
+    let wind_m_s = rows.iter().map(|row| pairs.wind_speed_m_s[*row]).collect();
+    Some(Together { times_ms, wind_m_s, segments, levels_db })
 }
 
 /// The rows of one band by themselves.
-fn one_band(pairs: &Pairs, rows: &[usize]) -> Together {
+fn one_band(pairs: &Pairs, rows: &[usize], segment_by: SegmentBy) -> Together {
+    let times_ms: Vec<i64> = rows.iter().map(|row| pairs.time_ms[*row]).collect();
     let pick = |values: &[f64]| -> Vec<f64> { rows.iter().map(|row| values[*row]).collect() };
     Together {
-        times_ms: rows.iter().map(|row| pairs.time_ms[*row]).collect(),
         wind_m_s: pick(&pairs.wind_speed_m_s),
-        deployment: pairs.deployment.as_ref().map(|column| rows.iter().map(|row| column.codes[*row]).collect()),
+        segments: segments(pairs, rows, &times_ms, segment_by),
         levels_db: vec![pick(&pairs.level_db)],
+        times_ms,
     }
+}
+
+/// The segments of some rows.
+fn segments(pairs: &Pairs, rows: &[usize], times_ms: &[i64], by: SegmentBy) -> Option<SegmentLabels> {
+    let column = pairs.deployment.as_ref();
+    let codes: Option<Vec<Option<u32>>> =
+        column.map(|column| rows.iter().map(|row| Some(column.codes[*row]).filter(|code| *code != u32::MAX)).collect());
+    let deployment = codes.as_deref().zip(column.map(|column| column.texts.as_slice()));
+    segment_labels(by, times_ms, deployment)
 }
 
 fn text_at(column: Option<&TextColumn>, row: usize) -> &str {

@@ -5,7 +5,9 @@ use crate::config::TableFormat;
 use crate::io::replace_file::replace_with;
 use crate::io::table::{TableWriter, write_dictionary};
 use crate::model::{Fitted, Table};
-use crate::report::columns::{bands_together_table, relation_table, wind_error_table};
+use crate::report::columns::{
+    bands_together_table, relation_table, replicates_table, segments_table, wind_error_table,
+};
 use std::path::{Path, PathBuf};
 
 /// Writes the relation tables in the study's formats, and the relations as JSON. Returns the files written.
@@ -18,6 +20,12 @@ pub fn write_relations(fitted: &Fitted, formats: &[TableFormat], folder: &Path) 
     replace_with(&json, relations_json(fitted).as_bytes())?;
     written.push(json);
     written.extend(write_table("bands_together", &bands_together_table(fitted), formats, folder)?);
+    if fitted.bands.iter().any(|band| !band.relation.deployments.is_empty()) {
+        written.extend(write_table("segments", &segments_table(fitted), formats, folder)?);
+    }
+    if fitted.bands.iter().any(|band| band.relation.replicates.is_some()) {
+        written.extend(write_table("replicates", &replicates_table(&fitted.bands), formats, folder)?);
+    }
     if fitted.bands.iter().any(|band| !band.checks.wind_error.is_empty()) {
         written.extend(write_table("wind_error", &wind_error_table(&fitted.bands), formats, folder)?);
     }

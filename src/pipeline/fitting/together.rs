@@ -1,5 +1,6 @@
 //! The bands of one sensor together: their relations and what is checked beside them.
 
+use super::segments::SegmentLabels;
 use crate::model::{BandChecks, CommonOnset, Lag, Relation, Screened};
 use crate::numerics::multiple_tests::benjamini_yekutieli;
 use crate::science::level_wind::{
@@ -15,7 +16,7 @@ const LONGEST_LAG_STEPS: u32 = 6;
 pub(super) struct Together {
     pub times_ms: Vec<i64>,
     pub wind_m_s: Vec<f64>,
-    pub deployment: Option<Vec<u32>>,
+    pub segments: Option<SegmentLabels>,
     /// By band; NaN where a pair is not used.
     pub levels_db: Vec<Vec<f64>>,
 }
@@ -24,18 +25,25 @@ pub(super) struct Together {
 pub(super) struct Found {
     pub bands: Vec<(Relation, BandChecks)>,
     pub common_onset: Option<CommonOnset>,
+    /// Names of the segments.
+    pub segments: Vec<String>,
     pub screen: Option<Screened>,
 }
 
 impl Found {
     pub(super) fn unchecked(relations: Vec<Relation>) -> Self {
         let bands = relations.into_iter().map(|relation| (relation, BandChecks::default())).collect();
-        Self { bands, common_onset: None, screen: None }
+        Self { bands, common_onset: None, segments: Vec::new(), screen: None }
     }
 
     /// Bands that share no time line: nothing can be said of them together.
     pub(super) fn of_bands(each: impl Iterator<Item = Self>) -> Self {
-        Self { bands: each.flat_map(|found| found.bands).collect(), common_onset: None, screen: None }
+        Self {
+            bands: each.flat_map(|found| found.bands).collect(),
+            common_onset: None,
+            segments: Vec::new(),
+            screen: None,
+        }
     }
 
     /// Keeps the relations with short events left in beside the others.
@@ -47,12 +55,16 @@ impl Found {
 }
 
 impl Together {
+    fn labels(&self) -> Option<&[u32]> {
+        self.segments.as_ref().map(|segments| segments.labels.as_slice())
+    }
+
     /// The relations alone.
     pub(super) fn fit(&self, options: &Options) -> Vec<Relation> {
         let record = SiteRecord {
             times_ms: &self.times_ms,
             wind_speed_m_s: &self.wind_m_s,
-            deployment: self.deployment.as_deref(),
+            deployment: self.labels(),
             levels_db: self.levels_db.iter().map(Vec::as_slice).collect(),
         };
         fit_site(&record, options)
@@ -60,8 +72,9 @@ impl Together {
 
     /// The relations with their checks; checks need replicates.
     pub(super) fn fit_and_check(&self, options: &Options) -> Found {
+        let segments = self.segments.as_ref().map_or_else(Vec::new, |segments| segments.names.clone());
         if options.replicates == 0 {
-            return Found::unchecked(self.fit(options));
+            return Found { segments, ..Found::unchecked(self.fit(options)) };
         }
         let mut relations = self.fit(&Options { keep_replicates: KeepReplicates::Yes, ..options.clone() });
         let common_onset = common_onset(&relations);
@@ -75,7 +88,7 @@ impl Together {
         for (relation, checks) in relations.iter().zip(&mut checks) {
             checks.p_onset_false_discovery = relation.diagnostics.p_onset.and_then(|_| adjusted.next());
         }
-        Found { bands: relations.into_iter().zip(checks).collect(), common_onset, screen: None }
+        Found { bands: relations.into_iter().zip(checks).collect(), common_onset, segments, screen: None }
     }
 
     /// As [`Self::fit_and_check`], with short events screened out first where asked for.
@@ -100,7 +113,7 @@ impl Together {
     }
 
     fn check(&self, relation: &Relation, levels_db: &[f64], options: &Options) -> BandChecks {
-        let deployment = self.deployment.as_deref();
+        let deployment = self.labels();
         let wind_error = correct_for_wind_error(&self.times_ms, &self.wind_m_s, levels_db, deployment, options);
         let mut checks =
             BandChecks { wind_error: wind_error.map_or_else(Vec::new, Vec::from), ..BandChecks::default() };

@@ -1,7 +1,7 @@
 //! The figures of a study, filled from its results.
 
 use super::words::{estimate, file_part, level_label, onset, reference};
-use super::{Pairing, Placed, ReportInput, deployment_labels};
+use super::{Pairing, Placed, ReportInput, segments_of};
 use crate::model::{BandLevels, FittedBand, Missing, SensorRecord, Track};
 use crate::numerics::quantile::quantiles;
 use crate::report::{
@@ -325,8 +325,9 @@ fn residual_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, index: usize, 
         families: Vec::new(),
     };
     let Some(fitted) = pairing.fitted.get(index) else { return figure };
-    let deployment = deployment_labels(pairing.record);
-    let of_window = residuals_of(&pairing.wind_m_s, &pairing.levels_db[index], deployment.as_deref(), &fitted.relation);
+    let segments = segments_of(input.study, pairing.record);
+    let labels = segments.as_ref().map(|segments| segments.labels.as_slice());
+    let of_window = residuals_of(&pairing.wind_m_s, &pairing.levels_db[index], labels, &fitted.relation);
     if let Some(block_h) = fitted.relation.diagnostics.resampled_block_length_h {
         let seed = input.study.relation.options.seed;
         figure.families = residual_families(pairing, &times_ms, &of_window, block_h, seed);

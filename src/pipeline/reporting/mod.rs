@@ -5,8 +5,8 @@ mod methods;
 mod page;
 pub(super) mod words;
 
-use super::fitting::wind_speed_m_s;
-use super::matching::{Matched, deployment_labels, used_levels_db};
+use super::fitting::{segments_of, wind_speed_m_s};
+use super::matching::{Matched, used_levels_db};
 use super::progress::Progress;
 use super::provenance::InputRecord;
 use crate::Error;

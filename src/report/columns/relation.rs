@@ -145,6 +145,18 @@ pub fn relation_table(fitted: &[FittedBand]) -> Table {
         "the same, corrected for the number of bands of the sensor (Benjamini and Yekutieli)",
         number(&|row| row.checks.p_onset_false_discovery),
     );
+    table.push(
+        "segments_differ",
+        "",
+        "how deployments (or months) differ, where the fit gives them parameters of their own",
+        text(&|row| row.relation.deployment_difference.map_or("", |d| d.name()).to_owned()),
+    );
+    table.push(
+        "p_segments_equal",
+        "1",
+        "p value of the block test of equal deployments (or months)",
+        number(&|row| row.relation.diagnostics.p_deployments),
+    );
     table.push("p_slope", "1", "p value of the test against no rise", number(&|row| row.relation.diagnostics.p_slope));
     table.push("p_floor", "1", "p value of the test against no floor", number(&|row| row.relation.diagnostics.p_floor));
     table.push(

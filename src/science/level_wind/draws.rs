@@ -90,8 +90,13 @@ impl Draws {
     /// Percentile interval of replicates at level 0.95 or 0.99, widened about the median for the number of blocks: t quantile over normal
     /// quantile, and the square root of blocks / (blocks - 1).
     pub(crate) fn interval(&self, replicates: &[f64], level: f64) -> (f64, f64) {
+        self.interval_times(replicates, level, 1.0)
+    }
+
+    /// As [`Self::interval`], widened about the median by one more factor.
+    pub(crate) fn interval_times(&self, replicates: &[f64], level: f64, factor: f64) -> (f64, f64) {
         let tail = 0.5 * (1.0 - level);
-        let factor = self.widening(level);
+        let factor = factor * self.widening(level);
         let [middle, low, high] = quantiles(replicates, [0.5, tail, 1.0 - tail]);
         (middle + (low - middle) * factor, middle + (high - middle) * factor)
     }
