@@ -1,4 +1,5 @@
 //! `fit`.
+#![expect(clippy::struct_excessive_bools, reason = "switches of a command line are bools")]
 #![expect(clippy::doc_markdown, reason = "doc comments are the help text; backticks would show in it")]
 
 use std::path::PathBuf;

@@ -65,7 +65,7 @@ pub(crate) enum Command {
     /// Write the wind at the sites and the matchup tables
     Match(StudyArgs),
     /// Fit level against wind speed, per site and band
-    Fit(FitArgs),
+    Fit(Box<FitArgs>),
     /// Draw the figures and write the HTML page
     Report(StudyArgs),
     /// Do the whole job: match, fit, report

@@ -308,7 +308,7 @@ fn periods(record: &SensorRecord, reason: &str, holds: impl Fn(usize) -> bool) -
         match shaded.last_mut() {
             Some(last) if last.end_ms == window.start.0 => last.end_ms = window.end.0,
             _ => {
-                shaded.push(ShadedPeriod { start_ms: window.start.0, end_ms: window.end.0, reason: reason.to_owned() })
+                shaded.push(ShadedPeriod { start_ms: window.start.0, end_ms: window.end.0, reason: reason.to_owned() });
             }
         }
     }

@@ -256,7 +256,7 @@ fn warnings(fitted: &[FittedBand]) -> Vec<String> {
         .iter()
         .filter_map(|warning| {
             let bands: Vec<String> =
-                fitted.iter().filter(|f| f.relation.warnings.contains(warning)).map(|f| f.band_label()).collect();
+                fitted.iter().filter(|f| f.relation.warnings.contains(warning)).map(FittedBand::band_label).collect();
             (!bands.is_empty()).then(|| format!("{}: {}.", bands.join(", "), warning.sentence()))
         })
         .collect()

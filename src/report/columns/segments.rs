@@ -2,6 +2,9 @@
 
 use crate::model::{ColumnData, DeploymentFit, Fitted, FittedBand, Resolved, Table};
 
+/// A quantity of a segment.
+type Pick = fn(&DeploymentFit) -> Resolved;
+
 /// One row per band and segment.
 pub fn segments_table(fitted: &Fitted) -> Table {
     let mut rows: Vec<(&FittedBand, &DeploymentFit, &str)> = Vec::new();
@@ -41,7 +44,7 @@ pub fn segments_table(fitted: &Fitted) -> Table {
         ColumnData::Integer(rows.iter().map(|(_, own, _)| own.samples as i64).collect()),
     );
     table.push("median_wind_m_s", "m s-1", "median wind speed of these pairs", number(&|_, o| Some(o.median_wind_m_s)));
-    let quantities: [([&'static str; 3], &'static str, fn(&DeploymentFit) -> Resolved); 2] = [
+    let quantities: [([&'static str; 3], &'static str, Pick); 2] = [
         (["floor_db", "floor_low_db", "floor_high_db"], "floor of the segment", |own| own.floor_db),
         (
             ["wind_component_at_10_m_s_db", "wind_component_low_db", "wind_component_high_db"],

@@ -14,11 +14,11 @@ fn pairs(path: &Path, bands: u32, samples: usize, lag: usize, change: impl Fn(u3
         // The wind is drawn first, so one seed gives one wind; another seed gives scatter of its own.
         let own = record(Truth { scatter: Scatter::Total { memory_h: 8.0 }, ..Truth::default() }, samples, 61);
         let other = record(Truth::default(), samples, 900 + u64::from(band));
-        for row in lag..samples {
+        for (row, wind) in wind.iter().enumerate().skip(lag) {
             let off = other.level_db[row] - super::simulator::mean_level_db(&Truth::default(), other.wind_m_s[row]);
             let mean = super::simulator::mean_level_db(&Truth::default(), own.wind_m_s[row - lag]);
             let level = change(band, row, mean + off);
-            writeln!(text, "{row},{},{:.4},{level:.3}", 100 * (band + 1), wind[row]).unwrap();
+            writeln!(text, "{row},{},{wind:.4},{level:.3}", 100 * (band + 1)).unwrap();
         }
     }
     std::fs::write(path, text).unwrap();
@@ -54,7 +54,7 @@ fn one_lag_in_all_bands_points_to_a_clock() {
 fn short_events_are_screened_counted_and_shown_both_ways() {
     let folder = tempfile::tempdir().unwrap();
     // Twenty events of two hours, 15 dB up in all bands, and one of nine hours, which is longer than a ship takes and stays.
-    let event = |row: usize| (row % 150 < 2 && row >= 150 && row < 150 * 21) || (3300..3309).contains(&row);
+    let event = |row: usize| (row % 150 < 2 && (150..150 * 21).contains(&row)) || (3300..3309).contains(&row);
     pairs(&folder.path().join("pairs.csv"), 5, 4000, 0, |_, row, level| if event(row) { level + 15.0 } else { level });
     let arguments = ["fit", "--matchups", "pairs.csv", "--replicates", "100", "--screen", "-o", "out"];
     let run = underwind(folder.path(), &arguments).succeeds();
