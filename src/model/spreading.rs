@@ -204,8 +204,39 @@ pub struct BandComparison {
     pub band: Band,
     /// The site offset; `None` where too few windows could fix it.
     pub reference: Option<ReferenceOffset>,
+    /// The floor that levels were held against, dB re 1 uPa^2; NaN without levels.
+    pub floor_db: f64,
+    /// Whether that floor was fitted or stated; else it is a stand-in, the quietest hundredth of the record.
+    pub floor_known: bool,
     /// Classes of f / fp over all winds, then each by wind.
     pub classes: Vec<ClassComparison>,
+}
+
+/// Sound below this frequency often comes from far away, Hz.
+const LEAST_LOCAL_HZ: f64 = 1.0;
+
+impl BandComparison {
+    /// What a reader of the verdicts should know, one sentence each.
+    pub fn remarks(&self) -> Vec<&'static str> {
+        let mut remarks = Vec::new();
+        if self.band.centre_hz < LEAST_LOCAL_HZ {
+            remarks.push("sound below about 1 Hz often comes from distant seas and need not follow the waves overhead");
+        }
+        if !self.floor_known {
+            remarks.push("no floor is known for this band; its quietest hundredth stands in for it");
+        }
+        remarks
+    }
+}
+
+/// What bounds the density, for the words of a verdict. The sound tells E squared times overlap; the overlap alone only where
+/// a buoy bounds E.
+pub fn density_words(density_sd_db: f64, buoy: bool) -> String {
+    if buoy {
+        format!("a buoy bounds E to {density_sd_db} dB")
+    } else {
+        format!("E squared times overlap, with E taken as known to {density_sd_db} dB")
+    }
 }
 
 /// Two models in the same class of the same band, on the same draws of the bootstrap.

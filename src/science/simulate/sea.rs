@@ -31,7 +31,8 @@ pub struct SeaSettings {
     pub swell_peak_hz: f64,
     /// Direction the swell comes from, degrees.
     pub swell_from_deg: f64,
-    /// The written spectra end in an f^-5 tail with frozen directions from this multiple of the wind sea's mean frequency on;
+    /// The written spectra end in an f^-5 tail with frozen directions from this multiple of the wind sea's mean frequency (m0 / m-1)
+    /// on;
     /// absent: no tail.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub tail_after_mean: Option<f64>,
@@ -61,8 +62,9 @@ pub struct SeaStep {
     pub to_rad: f64,
 }
 
-/// Mean over peak frequency of a Pierson-Moskowitz spectrum, m1 / (m0 fp): Gamma(3/4) (5/4)^(1/4) (closed form).
-pub const MEAN_OVER_PEAK: f64 = 1.295_7;
+/// Mean frequency m0 / m-1, to which wave models tie their tails, over the peak frequency of a Pierson-Moskowitz spectrum:
+/// (5/4)^(1/4) / Gamma(5/4) (closed form).
+pub const MEAN_OVER_PEAK: f64 = 1.166_5;
 
 /// The wind sea at every step of a wind (components in m/s towards east and north, equal steps): a first-order lag of the
 /// components. Steps without wind keep the sea as it was.
@@ -253,6 +255,15 @@ mod tests {
         let table = Opposing::new(&axes);
         let at = |density: &[f64]| table.own(&density[20 * 36..21 * 36]);
         assert!(at(&narrow) < 0.1 * at(&density));
+    }
+
+    // Physics reference: 2.5 times the mean frequency is 0.75, 0.38 and 0.25 Hz at 5, 10 and 15 m/s.
+    #[test]
+    fn the_tail_begins_where_wave_models_begin_it() {
+        for (wind_m_s, start_hz) in [(5.0, 0.75), (10.0, 0.38), (15.0, 0.25)] {
+            let sea = WindSeaSpectrum::fully_developed(wind_m_s, &Water::default());
+            assert!((2.5 * MEAN_OVER_PEAK * sea.peak_hz - start_hz).abs() < 0.006);
+        }
     }
 
     #[test]

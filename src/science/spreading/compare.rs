@@ -63,6 +63,8 @@ pub fn compare(
             model: model.model.to_owned(),
             band: windows.band,
             reference: reference_of(gathered, options),
+            floor_db: floor.level_db,
+            floor_known: floor.known,
             classes: (0..classes.len()).map(|at| judge(gathered, at, classes[at], floor, laws, options)).collect(),
         })
         .collect::<Vec<_>>();

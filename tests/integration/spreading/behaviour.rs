@@ -1,7 +1,9 @@
 //! What a comparison says, and what must not change it.
 
 use super::deployments::{Deployment, Model, Obstacle, deployment};
-use underwind::model::{BandComparison, ClassComparison, NotIdentified, NotRadiated, RadiationFlag, SpreadVerdict};
+use underwind::model::{
+    BandComparison, ClassComparison, NotIdentified, NotRadiated, RadiationFlag, SpreadVerdict, density_words,
+};
 use underwind::science::spreading::{BandFloor, LawTable, SpreadOptions, compare, testability};
 
 const HOURS: usize = 4380;
@@ -72,6 +74,18 @@ fn each_obstacle_has_its_own_reason() {
     let laws = LawTable::new(1.0);
     let (comparison, _) = compare(&windows, &[plain.model("a")], &laws, &SpreadOptions::default());
     assert_eq!(class(&comparison[0], 1.5).verdict.reason(), Some(NotIdentified::Instrument));
+}
+
+#[test]
+fn what_the_reader_should_know_is_said() {
+    let mut deployment = deployment(22, Model::Right, Obstacle::None, HOURS);
+    deployment.band = underwind::model::Band::from_edges(0.7, 0.9).unwrap();
+    let known = judged(&deployment);
+    assert!(known.floor_known && known.remarks().len() == 1 && known.remarks()[0].contains("distant seas"));
+    let windows = underwind::science::spreading::BandWindows { floor: BandFloor::default(), ..deployment.windows() };
+    let (comparison, _) = compare(&windows, &[deployment.model("a")], &LawTable::new(1.0), &SpreadOptions::default());
+    assert!(!comparison[0].floor_known && comparison[0].remarks().len() == 2);
+    assert_eq!(density_words(0.5, true), "a buoy bounds E to 0.5 dB");
 }
 
 #[test]

@@ -190,7 +190,7 @@ pub(crate) fn deployment(seed: u64, model: Model, obstacle: Obstacle, hours: usi
             let e = spectrum.density_m2_hz(*f) * 10f64.powf(0.1 * error_db);
             *value = e * e * 10f64.powf(0.1 * modelled.db(f / spectrum.peak_hz)) / TAU;
         }
-        let tail_start_hz = (obstacle == Obstacle::Tail).then_some(2.5 * 1.296 * spectrum.peak_hz);
+        let tail_start_hz = (obstacle == Obstacle::Tail).then_some(2.5 * 1.1665 * spectrum.peak_hz);
         bands.levels(&source, tail_start_hz, &mut out);
         radiated.push(out[0]);
         f_over_fp.push(x);

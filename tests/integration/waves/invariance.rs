@@ -125,6 +125,9 @@ proptest! {
         let overlap = table.own(&normed);
         let square: f64 = normed.iter().map(|d| d * d * step).sum();
         prop_assert!(overlap >= 0.0 && overlap <= square * (1.0 + 1e-12) && overlap <= 36.0 / (4.0 * PI) + 1e-9);
+        // Over half of the circle it is exactly half.
+        let half: f64 = (0..18).map(|i| normed[i] * normed[i + 18] * step).sum();
+        prop_assert!((2.0 * half - overlap).abs() <= 1e-12 * overlap);
         // Bins and the whole Fourier sum differ by the last harmonic alone.
         let last: f64 = normed.iter().enumerate().map(|(i, d)| if i % 2 == 0 { d * step } else { -d * step }).sum();
         prop_assert!((overlap - table.by_fourier(&normed, &normed) - last * last / TAU).abs() < 1e-10);
