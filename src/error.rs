@@ -64,6 +64,9 @@ pub enum Error {
     /// A site list or track.
     #[error(transparent)]
     Sites(#[from] crate::io::sites::SiteError),
+    /// A list of intervals.
+    #[error(transparent)]
+    Intervals(#[from] crate::io::intervals::IntervalError),
     /// A wind table.
     #[error(transparent)]
     WindTable(#[from] crate::io::wind_table::WindTableError),
@@ -113,6 +116,7 @@ impl Error {
             | Self::Grid(_)
             | Self::Levels(_)
             | Self::Sites(_)
+            | Self::Intervals(_)
             | Self::WindTable(_)
             | Self::LevelWindows(_)
             | Self::Checksum(_)

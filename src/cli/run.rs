@@ -80,6 +80,9 @@ fn counts(outcome: &Outcome) -> String {
     for (why, n) in &counts.not_used {
         text.push_str(&format!("  not used, {why}: {n}\n"));
     }
+    for (why, n) in &counts.excluded {
+        text.push_str(&format!("  left out by rule, {why}: {n}\n"));
+    }
     for (why, n) in &counts.rows_not_used {
         text.push_str(&format!("level rows not used, {why}: {n}\n"));
     }

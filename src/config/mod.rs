@@ -4,6 +4,7 @@
 //! wrong. Unknown keys are errors. Paths are relative to the study file. Every error names the file and the line.
 
 mod error;
+mod exclude;
 mod fit;
 mod levels;
 mod matching;
@@ -15,6 +16,7 @@ mod study;
 mod wind;
 
 pub use error::StudyError;
+pub use exclude::{ExcludeInput, ExcludeWhat};
 pub use fit::{FloorBy, OffsetBy, RelationSection, SegmentBy, check_replicates, segment_choice};
 pub use levels::{LevelsInput, level_options_from};
 pub use matching::{MatchSection, WindowSpeed};

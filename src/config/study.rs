@@ -1,6 +1,7 @@
 //! The study as a whole.
 
 use super::error::{Complaint, StudyError};
+use super::exclude::{ExcludeInput, RawExclude};
 use super::fit::{RawRelation, RelationSection};
 use super::levels::{LevelsInput, RawLevels};
 use super::matching::{MatchSection, RawMatch};
@@ -36,6 +37,8 @@ struct RawStudy {
     spectra: Vec<Spanned<RawSpectra>>,
     #[serde(default)]
     levels: Vec<Spanned<RawLevels>>,
+    #[serde(default)]
+    exclude: Vec<Spanned<RawExclude>>,
     #[serde(default, rename = "match")]
     matching: RawMatch,
     #[serde(default)]
@@ -94,6 +97,8 @@ pub struct Study {
     pub spectra: Vec<SpectraInput>,
     /// Level tables.
     pub levels: Vec<LevelsInput>,
+    /// What is left out by rule.
+    pub exclude: Vec<ExcludeInput>,
     /// How levels and wind are brought together.
     #[serde(rename = "match")]
     pub matching: MatchSection,
@@ -135,6 +140,11 @@ impl RawStudy {
             let place = raw.span().start;
             levels.push(raw.into_inner().resolve(base, complaint, place)?);
         }
+        let mut exclude = Vec::new();
+        for raw in self.exclude {
+            let place = raw.span().start;
+            exclude.push(raw.into_inner().resolve(base, complaint, place)?);
+        }
         let mut tables = self.study.tables.unwrap_or_else(|| vec![TableFormat::Parquet, TableFormat::Csv]);
         tables.dedup();
         if tables.is_empty() {
@@ -149,6 +159,7 @@ impl RawStudy {
             wind,
             spectra,
             levels,
+            exclude,
             matching: self.matching.resolve(complaint)?,
             relation: self.relation.resolve(complaint)?,
             report: self.report.resolve(complaint)?,

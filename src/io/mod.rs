@@ -3,6 +3,7 @@
 pub mod checksum;
 mod contain;
 pub mod delimited;
+pub mod intervals;
 pub mod levels;
 pub mod netcdf;
 pub mod netcdf_write;

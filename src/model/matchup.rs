@@ -1,6 +1,6 @@
 //! Conditions and matchups: the two tables that everything downstream stands on, as plain columns.
 
-use crate::model::{Band, FlagSet, LevelKind, LevelStatistic, Missing, SourceId};
+use crate::model::{Band, Exclusion, FlagSet, LevelKind, LevelStatistic, Missing, SourceId};
 use crate::units::Window;
 
 /// The wind in one window.
@@ -35,6 +35,33 @@ pub struct Conditions {
     pub missing: Vec<Option<Missing>>,
     /// Distance from the site to the nearest node used, km; NaN where no node was found or the source is a table.
     pub nearest_node_km: f64,
+    /// What the study's rules leave out.
+    pub exclusion: Exclusion,
+}
+
+impl Conditions {
+    /// No wind in any of so many windows.
+    pub fn empty(source: SourceId, site: String, windows: usize) -> Self {
+        Self {
+            source,
+            site,
+            wind: vec![None; windows],
+            flags: vec![FlagSet::default(); windows],
+            missing: vec![None; windows],
+            nearest_node_km: f64::NAN,
+            exclusion: Exclusion::default(),
+        }
+    }
+
+    /// Why the pair of a window and a band of this record is not used, or `None` when it is.
+    pub fn pair_reason(&self, record: &SensorRecord, band: usize, window: usize) -> Option<Missing> {
+        let levels = &record.bands[band];
+        levels.reason[window]
+            .or_else(|| (!levels.level_db[window].is_finite()).then_some(Missing::NotFinite))
+            .or_else(|| record.deployment[window].is_none().then_some(Missing::OutsideDeployment))
+            .or(self.missing[window])
+            .or_else(|| self.exclusion.rule(window, band).map(|_| Missing::Excluded))
+    }
 }
 
 /// The levels of one sensor, window by window and band by band.
@@ -80,17 +107,4 @@ impl SensorRecord {
     pub fn overlapping_windows(&self) -> usize {
         self.windows.windows(2).filter(|pair| pair[1].start < pair[0].end).count()
     }
-}
-
-/// Why a pair of wind and level is not used, or `None` when it is.
-pub fn pair_reason(
-    level: Option<Missing>,
-    level_db: f64,
-    in_deployment: bool,
-    wind: Option<Missing>,
-) -> Option<Missing> {
-    level
-        .or_else(|| (!level_db.is_finite()).then_some(Missing::NotFinite))
-        .or_else(|| (!in_deployment).then_some(Missing::OutsideDeployment))
-        .or(wind)
 }

@@ -1,6 +1,7 @@
 //! Plain data with its invariants: what crosses between readers, science, figures and tables.
 
 mod band;
+mod exclusion;
 mod field;
 mod fitted;
 mod level;
@@ -18,6 +19,7 @@ mod spreading;
 mod table;
 
 pub use band::*;
+pub use exclusion::*;
 pub use field::*;
 pub use fitted::*;
 pub use level::*;

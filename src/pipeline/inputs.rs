@@ -136,6 +136,7 @@ impl Inputs {
         }
         files.extend(self.spectra.iter().flat_map(|spectra| spectra.input.files.iter().cloned()));
         files.extend(self.levels.iter().flat_map(|levels| levels.input.files.iter().cloned()));
+        files.extend(super::exclusion::interval_files(study));
         files.extend(study.sites.file.iter().cloned());
         files.extend(study.sites.sites.iter().filter_map(|(_, track)| track.clone()));
         files

@@ -1,5 +1,6 @@
 //! `match`: levels into windows, wind over the windows, tables.
 
+use super::exclusion::Rules;
 use super::inputs::{Inputs, OpenLevels, OpenWind};
 use super::progress::Progress;
 use super::sampling::sample_wind;
@@ -9,7 +10,7 @@ use crate::io::levels::LevelNames;
 use crate::io::table::{TableWriter, write_dictionary};
 use crate::io::wind_table::read_wind_table;
 use crate::model::{
-    BandLevels, Conditions, LevelKind, LevelRow, Missing, Screened, SensorRecord, Site, Table, WindSeries, pair_reason,
+    BandLevels, Conditions, LevelKind, LevelRow, Missing, Screened, SensorRecord, Site, Table, WindSeries,
 };
 use crate::report::columns::{conditions_table, matchups_table, sampled_table};
 use crate::science::level_wind::{ScreenOptions, screen_short_events};
@@ -45,6 +46,8 @@ pub struct Counts {
     pub used: u64,
     /// Pairs that do not, by reason.
     pub not_used: BTreeMap<&'static str, u64>,
+    /// Pairs that each rule of the study leaves out, by the rule's reason.
+    pub excluded: Vec<(String, u64)>,
     /// Rows of the level tables that reach no pair, by reason.
     pub rows_not_used: BTreeMap<&'static str, u64>,
 }
@@ -88,13 +91,21 @@ pub fn bring_together(study: &Study, inputs: &Inputs, progress: &dyn Progress) -
     for wind in &inputs.wind {
         series.extend(wind_series(study, wind, &inputs.sites, whole, &mut remarks, progress)?);
     }
+    let rules = Rules::read(study)?;
+    remarks.extend(rules.notes.iter().cloned());
     let conditions: Vec<Vec<Conditions>> = records
         .iter()
         .map(|record| {
             let here = series.iter().filter(|series| series.site == record.site);
-            here.map(|series| wind_over_windows(series, &record.windows)).collect()
+            here.map(|series| {
+                let mut conditions = wind_over_windows(series, &record.windows);
+                rules.apply(record, &mut conditions);
+                conditions
+            })
+            .collect()
         })
         .collect();
+    counts.excluded = rules.reasons.into_iter().map(|reason| (reason, 0)).collect();
     for record in &records {
         let overlaps = record.overlapping_windows();
         if overlaps > 0 {
@@ -277,11 +288,16 @@ fn screen(record: &mut SensorRecord) -> Screened {
 fn count_pairs(records: &[SensorRecord], conditions: &[Vec<Conditions>], counts: &mut Counts) {
     for (record, sources) in records.iter().zip(conditions) {
         for conditions in sources {
-            for band in &record.bands {
+            for band in 0..record.bands.len() {
                 for k in 0..record.windows.len() {
-                    match reason_of_pair(record, band, conditions, k) {
+                    match conditions.pair_reason(record, band, k) {
                         None => counts.used += 1,
-                        Some(why) => *counts.not_used.entry(why.name()).or_default() += 1,
+                        Some(why) => {
+                            *counts.not_used.entry(why.name()).or_default() += 1;
+                            if let (Missing::Excluded, Some(rule)) = (why, conditions.exclusion.rule(k, band)) {
+                                counts.excluded[rule].1 += 1;
+                            }
+                        }
                     }
                 }
             }
@@ -289,37 +305,28 @@ fn count_pairs(records: &[SensorRecord], conditions: &[Vec<Conditions>], counts:
     }
 }
 
-/// Why the pair of one band and window is not used, or `None` when it is.
-pub(super) fn reason_of_pair(
-    record: &SensorRecord,
-    band: &BandLevels,
-    conditions: &Conditions,
-    k: usize,
-) -> Option<Missing> {
-    pair_reason(band.reason[k], band.level_db[k], record.deployment[k].is_some(), conditions.missing[k])
-}
-
 /// Levels of each band, one entry a window, dB; NaN where the pair is not used.
 pub(super) fn used_levels_db(record: &SensorRecord, conditions: &Conditions) -> Vec<Vec<f64>> {
-    let level = |band: &BandLevels, k: usize| match reason_of_pair(record, band, conditions, k) {
-        None => band.level_db[k],
-        Some(_) => f64::NAN,
-    };
-    record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()
+    levels_db(record, |band, k| conditions.pair_reason(record, band, k).is_none())
 }
 
 /// As [`used_levels_db`], with the levels that the screen for short events left out.
 pub(super) fn with_short_events_db(record: &SensorRecord, conditions: &Conditions) -> Vec<Vec<f64>> {
-    let level = |band: &BandLevels, k: usize| match reason_of_pair(record, band, conditions, k) {
-        None => band.level_db[k],
-        Some(Missing::ShortEvent)
-            if record.deployment[k].is_some() && conditions.missing[k].is_none() && band.level_db[k].is_finite() =>
-        {
-            band.level_db[k]
+    levels_db(record, |band, k| match conditions.pair_reason(record, band, k) {
+        None => true,
+        Some(Missing::ShortEvent) => {
+            let usable = record.deployment[k].is_some() && conditions.missing[k].is_none();
+            usable && conditions.exclusion.rule(k, band).is_none() && record.bands[band].level_db[k].is_finite()
         }
-        Some(_) => f64::NAN,
+        Some(_) => false,
+    })
+}
+
+fn levels_db(record: &SensorRecord, take: impl Fn(usize, usize) -> bool) -> Vec<Vec<f64>> {
+    let of_band = |(index, band): (usize, &BandLevels)| {
+        band.level_db.iter().enumerate().map(|(k, level)| if take(index, k) { *level } else { f64::NAN }).collect()
     };
-    record.bands.iter().map(|band| (0..record.windows.len()).map(|k| level(band, k)).collect()).collect()
+    record.bands.iter().enumerate().map(of_band).collect()
 }
 
 fn nothing_in_common(inputs: &Inputs, matched: &Matched, whole: Option<Window>) -> Error {
@@ -365,6 +372,7 @@ pub fn write_tables(
     }
     written.extend(sampled.finish()?);
 
+    let rules: Vec<String> = matched.counts.excluded.iter().map(|(reason, _)| reason.clone()).collect();
     // Sources vary slowest: the order of the tables is source, site, sensor, window, band.
     let mut conditions_out = Output::create(study, folder, "conditions")?;
     let mut matchups_out = Output::create(study, folder, "matchups")?;
@@ -376,7 +384,7 @@ pub fn write_tables(
             let mut start = 0;
             while start < record.windows.len() {
                 let end = (start + step).min(record.windows.len());
-                matchups_out.append(&matchups_table(record, conditions, start..end))?;
+                matchups_out.append(&matchups_table(record, conditions, &rules, start..end))?;
                 start = end;
             }
             progress.advance(1);

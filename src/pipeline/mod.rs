@@ -2,6 +2,7 @@
 
 mod check;
 mod check_spectra;
+mod exclusion;
 mod fitting;
 mod inputs;
 mod look_up;

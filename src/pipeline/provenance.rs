@@ -34,6 +34,8 @@ pub(super) struct Provenance<'a> {
     pub pairs_used: u64,
     /// Pairs that do not, by reason.
     pub pairs_not_used: &'a BTreeMap<&'static str, u64>,
+    /// Pairs that each rule of the study leaves out, by its reason.
+    pub pairs_excluded: &'a [(String, u64)],
     /// Rows of the level tables that reach no pair, by reason.
     pub level_rows_not_used: &'a BTreeMap<&'static str, u64>,
     /// Remarks of the run.

@@ -80,6 +80,7 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
         inputs: &records,
         pairs_used: matched.counts.used,
         pairs_not_used: &matched.counts.not_used,
+        pairs_excluded: &matched.counts.excluded,
         level_rows_not_used: &matched.counts.rows_not_used,
         remarks: &matched.remarks,
     };

@@ -1,5 +1,6 @@
 //! The science: from plain data to plain data. No files, no printing, no clock.
 
+pub mod exclusion;
 pub mod level_wind;
 pub mod matchup;
 pub mod sample;

@@ -4,6 +4,7 @@
 mod cli;
 mod demo;
 mod estimator;
+mod exclusion;
 mod grids;
 mod layering;
 mod real_data;

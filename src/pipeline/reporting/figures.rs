@@ -267,7 +267,7 @@ fn time_input(input: &ReportInput<'_>, pairing: &Pairing<'_>, title: &str) -> Ti
                     .collect(),
             },
         ],
-        shaded: left_out(pairing),
+        shaded: left_out(input, pairing),
     }
 }
 
@@ -292,9 +292,19 @@ fn chosen_bands(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<usize> {
 }
 
 /// Periods that do not go into the fit, each with its reason.
-fn left_out(pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
+fn left_out(input: &ReportInput<'_>, pairing: &Pairing<'_>) -> Vec<ShadedPeriod> {
     let record = pairing.record;
     let mut shaded = periods(record, "outside the sensor's deployments", |k| record.deployment[k].is_none());
+    let mut reasons: Vec<&String> = Vec::new();
+    for (number, (reason, _)) in input.matched.counts.excluded.iter().enumerate() {
+        if reasons.contains(&reason) {
+            continue;
+        }
+        reasons.push(reason);
+        shaded.extend(periods(record, reason, |k| {
+            (0..record.bands.len()).any(|band| pairing.conditions.exclusion.rule(k, band) == Some(number))
+        }));
+    }
     shaded.extend(periods(record, "short events, screened out", |k| {
         record.bands.iter().any(|band| band.reason[k] == Some(Missing::ShortEvent))
     }));

@@ -86,6 +86,15 @@ fn inputs_section(input: &ReportInput<'_>, whole: Vec<Placed>) -> Section {
         note: String::new(),
     };
     blocks.push(Block::Table(table));
+    if !input.matched.counts.excluded.is_empty() {
+        blocks.push(Block::Table(Table {
+            caption: "Pairs left out by the study's rules".into(),
+            columns: vec![Column::row_name("reason"), Column::number("pairs", "")],
+            rows: input.matched.counts.excluded.iter().map(|(why, n)| vec![why.clone(), n.to_string()]).collect(),
+            note: "The first rule that applies counts. The column excluded_by of the matchups names it for each pair."
+                .into(),
+        }));
+    }
     if !input.matched.counts.rows_not_used.is_empty() {
         let points = input.matched.counts.rows_not_used.iter().map(|(why, n)| format!("{why}: {n}")).collect();
         blocks.push(Block::Text("Rows of the level tables that reach no pair:".into()));

@@ -70,6 +70,11 @@ pub(super) fn trials(study: &Study, grounds: &Grounds) -> Vec<Trial> {
     other.relation.screen = !study.relation.screen;
     let taken = if study.relation.screen { "left in" } else { "screened out" };
     add("short events", taken.to_owned(), Change::Match(Box::new(other)));
+    if !study.exclude.is_empty() {
+        let mut other = study.clone();
+        other.exclude.clear();
+        add("exclusion rules", "not applied".to_owned(), Change::Match(Box::new(other)));
+    }
     for lag in [-1, 1] {
         let taken = if lag > 0 { "level one window after the wind" } else { "level one window before the wind" };
         add("lag", taken.to_owned(), Change::Lag(lag));

@@ -4,15 +4,19 @@ use super::conditions::{from_direction_deg, push_windows};
 use super::sampled::repeated;
 use crate::model::{
     BandLevels, ColumnData, Conditions, LevelKind, LevelStatistic, Missing, SensorRecord, Table, WindowWind,
-    pair_reason,
 };
 use std::ops::Range;
 
-/// The rows of one source and sensor for a run of windows; bands vary fastest.
+/// The rows of one source and sensor for a run of windows; bands vary fastest. `rules`: the reason of each rule of the study.
 ///
 /// # Panics
 /// When the conditions are of other windows: a defect in the caller.
-pub fn matchups_table(record: &SensorRecord, conditions: &Conditions, windows: Range<usize>) -> Table {
+pub fn matchups_table(
+    record: &SensorRecord,
+    conditions: &Conditions,
+    rules: &[String],
+    windows: Range<usize>,
+) -> Table {
     assert_eq!(record.windows.len(), conditions.wind.len(), "conditions of other windows");
     let bands = record.bands.len();
     let rows = windows.len() * bands;
@@ -95,16 +99,23 @@ pub fn matchups_table(record: &SensorRecord, conditions: &Conditions, windows: R
         "direction that the mean wind comes from, clockwise from true north",
         wind(from_direction_deg),
     );
-    push_use(&mut table, record, conditions, windows);
+    push_use(&mut table, record, conditions, rules, windows);
     table
 }
 
-fn push_use(table: &mut Table, record: &SensorRecord, conditions: &Conditions, windows: Range<usize>) {
+fn push_use(
+    table: &mut Table,
+    record: &SensorRecord,
+    conditions: &Conditions,
+    rules: &[String],
+    windows: Range<usize>,
+) {
     let rows = windows.len() * record.bands.len();
     let mut used = Vec::with_capacity(rows);
     let mut codes = Vec::with_capacity(rows);
     let mut flag_texts = Vec::new();
     let mut flag_codes = Vec::with_capacity(rows);
+    let mut rule_codes = Vec::with_capacity(if rules.is_empty() { 0 } else { rows });
     for k in windows {
         let names = conditions.flags[k].names();
         let flag_code = if names.is_empty() {
@@ -115,9 +126,12 @@ fn push_use(table: &mut Table, record: &SensorRecord, conditions: &Conditions, w
                 flag_texts.len() - 1
             }) as u32
         };
-        for band in &record.bands {
-            let reason =
-                pair_reason(band.reason[k], band.level_db[k], record.deployment[k].is_some(), conditions.missing[k]);
+        for band in 0..record.bands.len() {
+            let reason = conditions.pair_reason(record, band, k);
+            if !rules.is_empty() {
+                let rule = conditions.exclusion.rule(k, band).filter(|_| reason == Some(Missing::Excluded));
+                rule_codes.push(rule.map_or(u32::MAX, |rule| rule as u32));
+            }
             used.push(reason.is_none());
             codes.push(reason.map_or(u32::MAX, |why| why as u32));
             flag_codes.push(flag_code);
@@ -132,6 +146,10 @@ fn push_use(table: &mut Table, record: &SensorRecord, conditions: &Conditions, w
     );
     table.push("use", "", "whether the pair goes into the fit", ColumnData::Truth(used));
     table.push("reason", "", "why the pair does not go into the fit", ColumnData::Text { texts, codes });
+    if !rules.is_empty() {
+        let data = ColumnData::Text { texts: rules.to_vec(), codes: rule_codes };
+        table.push("excluded_by", "", "the study's rule that leaves the pair out, by its reason", data);
+    }
 }
 
 fn samples(band: &BandLevels, k: usize) -> u32 {

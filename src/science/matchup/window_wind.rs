@@ -12,19 +12,13 @@ use crate::units::{Instant, Window};
 /// Wind over each of a site's windows.
 pub fn wind_over_windows(series: &WindSeries, windows: &[Window]) -> Conditions {
     let valid = ValidSteps::of(series);
-    let mut conditions = Conditions {
-        source: series.source.clone(),
-        site: series.site.clone(),
-        wind: Vec::with_capacity(windows.len()),
-        flags: Vec::with_capacity(windows.len()),
-        missing: Vec::with_capacity(windows.len()),
-        nearest_node_km: series.nodes.iter().map(|node| node.distance_km).fold(f64::NAN, f64::min),
-    };
-    for window in windows {
+    let mut conditions = Conditions::empty(series.source.clone(), series.site.clone(), windows.len());
+    conditions.nearest_node_km = series.nodes.iter().map(|node| node.distance_km).fold(f64::NAN, f64::min);
+    for (k, window) in windows.iter().enumerate() {
         let sampled = valid.mean(*window);
-        conditions.flags.push(sampled.flags());
-        conditions.missing.push(sampled.missing());
-        conditions.wind.push(sampled.value().copied());
+        conditions.flags[k] = sampled.flags();
+        conditions.missing[k] = sampled.missing();
+        conditions.wind[k] = sampled.value().copied();
     }
     conditions
 }
