@@ -4,7 +4,7 @@ use super::expression::Expression;
 use crate::model::{Band, BandLevels, Conditions, Exclusion, SensorRecord};
 use crate::units::{Compass, Window};
 
-/// Columns that conditions may use. The first ones belong to the window, those from [`FIRST_OF_BAND`] on to the band as well.
+/// Columns that conditions may use. Those up to `year` belong to the window, the others to the band as well.
 pub const RULE_COLUMNS: [&str; 12] = [
     "wind_speed_mean_m_s",
     "wind_speed_of_mean_m_s",
