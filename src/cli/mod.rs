@@ -28,6 +28,13 @@ impl<E: Into<Error>> From<E> for Ending {
 /// Runs the program; returns its exit status.
 pub fn main() -> ExitCode {
     let cli = Cli::parse();
+    if let Command::Probe { file } = &cli.command {
+        crate::io::netcdf::probe(file);
+        return ExitCode::SUCCESS;
+    }
+    if let Ok(program) = std::env::current_exe() {
+        crate::io::netcdf::probe_with(program);
+    }
     let terminal = Terminal::new(cli.global.quiet);
     if let Some(threads) = cli.global.threads {
         let pool = rayon::ThreadPoolBuilder::new().num_threads(usize::from(threads)).build_global();
@@ -44,6 +51,7 @@ pub fn main() -> ExitCode {
         Command::Report(args) => run::report(args, &terminal),
         Command::Run(args) => run::run(args, &terminal),
         Command::Simulate(args) => run::simulate(args, &terminal),
+        Command::Probe { .. } => Ok(()),
     };
     match ended {
         Ok(()) => ExitCode::SUCCESS,

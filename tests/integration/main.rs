@@ -5,6 +5,7 @@ mod cli;
 mod demo;
 mod estimator;
 mod exclusion;
+mod faults;
 mod grids;
 mod layering;
 mod real_data;

@@ -72,4 +72,10 @@ pub(crate) enum Command {
     Run(RunArgs),
     /// Write a deployment with known truth, to try a plan or the tool on
     Simulate(SimulateArgs),
+    /// Open a file in a process of its own, so that a crash of the file library harms nothing
+    #[command(hide = true, name = "probe-file")]
+    Probe {
+        /// The file
+        file: std::path::PathBuf,
+    },
 }

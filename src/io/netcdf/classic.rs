@@ -87,7 +87,12 @@ impl<'a> Cursor<'a> {
 
     fn name(&mut self) -> Result<String, Trouble> {
         let length = self.count()?;
-        Ok(String::from_utf8_lossy(self.padded(length)?).into_owned())
+        // The format has names in UTF-8. A name that is none has lost a bit, and with it the attribute that it names: a packed
+        // value without its offset would be a wrong number.
+        let bytes = self.padded(length)?;
+        std::str::from_utf8(bytes).map(str::to_owned).map_err(|_| {
+            Trouble::Wrong(format!("the name \"{}\" in its header is not UTF-8", String::from_utf8_lossy(bytes)))
+        })
     }
 
     /// The number of items of a list that has this tag.

@@ -97,6 +97,39 @@ fn axis_of(header: &Header, dimension: &str, options: &WindOptions) -> Axes {
     }
 }
 
+/// The dimension along which a field's time runs, with the variable that holds it: the one that the study names; valid
+/// times, along whichever dimension; the coordinate of a dimension of times; else a time among the field's `coordinates`.
+fn time_of(header: &Header, variable: &Variable, options: &WindOptions) -> Option<(usize, String)> {
+    let (names, shape) = (header.dimension_names(variable), header.shape(variable));
+    // The dimension of a variable that has one, besides such of length one.
+    let along = |name: &str| -> Option<usize> {
+        let of_time = header.variable(name).filter(|time| time.number_type().is_some())?;
+        let own: Vec<usize> =
+            of_time.dimensions.iter().filter_map(|at| variable.dimensions.iter().position(|d| d == at)).collect();
+        let long: Vec<usize> = own.iter().copied().filter(|place| shape[*place] > 1).collect();
+        match (of_time.dimensions.len() == own.len(), &long[..], &own[..]) {
+            (true, [place], _) | (true, [], [.., place]) => Some(*place),
+            _ => None,
+        }
+    };
+    if let Some(named) = &options.time {
+        let place = along(named).or_else(|| names.iter().position(|name| name == named))?;
+        return Some((place, named.clone()));
+    }
+    if let Some(place) = along("valid_time") {
+        return Some((place, "valid_time".to_owned()));
+    }
+    if let Some(place) = names.iter().position(|name| axis_of(header, name, options) == Axes::Time) {
+        return Some((place, names[place].to_owned()));
+    }
+    let coordinates = variable.text("coordinates").unwrap_or_default();
+    coordinates.split_whitespace().find_map(|name| {
+        let time = header.variable(name).filter(|time| looks_like_time(time))?;
+        let is_start = lower(time.text("standard_name")) == "forecast_reference_time";
+        along(name).filter(|_| !is_start).map(|place| (place, name.to_owned()))
+    })
+}
+
 /// Finds the placement of a field.
 pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOptions) -> Result<Placement, NetcdfError> {
     let header = &reader.header;
@@ -113,8 +146,14 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
     }
     let height_m = scalar(reader, variable, "height").or_else(|| super::roles::height_in_name_m(variable));
     let mut rest = Rest { fixed: vec![vec![0_u64; names.len()]], height_m, notes: Vec::new() };
+    let time = time_of(header, variable, options);
     for (place, name) in names.iter().enumerate() {
-        let axis = axis_of(header, name, options);
+        let axis = match (&time, axis_of(header, name, options)) {
+            (Some((of_time, _)), _) if *of_time == place => Axes::Time,
+            // The start of the one forecast in the file; the time runs along another dimension.
+            (Some(_), Axes::Time) if header.shape(variable)[place] == 1 => Axes::Other,
+            (_, axis) => axis,
+        };
         let wanted = match axis {
             Axes::Time => Some(0),
             Axes::Latitude => Some(1),
@@ -131,7 +170,8 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             places[wanted] = Some(place);
             continue;
         }
-        rest.take(reader, variable, options, (place, axis))?;
+        let is_valid_time = time.as_ref().is_some_and(|(_, name)| name == "valid_time");
+        rest.take(reader, variable, options, (place, axis), is_valid_time)?;
     }
     let Rest { fixed, height_m, notes } = rest;
     if let (Some(wanted_m), Some(found_m)) = (options.height_m, height_m)
@@ -140,7 +180,10 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
         return Err(refuse(format!("it is at {found_m} m, but `wind.height_m` asks for {wanted_m} m")));
     }
     let [step, row, column] = places;
-    let time = step.map(|place| names[place].to_owned());
+    let time = match (time, step) {
+        (Some((_, name)), _) => Some(name),
+        (None, place) => place.map(|place| names[place].to_owned()),
+    };
     let grid = grid(reader, variable, &names, row, column, options)?;
     Ok(Placement { step, row, column, fixed, time, grid, height_m, notes })
 }
@@ -160,6 +203,7 @@ impl Rest {
         variable: &Variable,
         options: &WindOptions,
         (place, axis): (usize, Axes),
+        is_valid_time: bool,
     ) -> Result<(), NetcdfError> {
         let header = &reader.header;
         let refuse = |problem: String| NetcdfError::Variable {
@@ -198,7 +242,7 @@ impl Rest {
             (Axes::Lead, 1) => {
                 let lead = values()?.first().copied().filter(|_| header.variable(name).is_some()).unwrap_or(0.0);
                 // Where the time is stated to be the valid time, the lead is settled.
-                if lead != 0.0 && options.time.is_none() && !has_valid_time(header, &names) {
+                if lead != 0.0 && options.time.is_none() && !is_valid_time {
                     return Err(refuse(format!(
                         "it is a forecast of lead time {lead} (`{name}`), so that its times may be those of the forecast's start; set `wind.time` to the variable of valid times"
                     )));
@@ -324,11 +368,6 @@ fn grid_mapping(header: &Header, variable: &Variable) -> Option<Layout> {
         "rotated_latitude_longitude" => Some(Layout::RotatedPole),
         _ => Some(Layout::Projected),
     }
-}
-
-/// Whether one of a field's dimensions has a coordinate of valid times beside it.
-fn has_valid_time(header: &Header, dimensions: &[&str]) -> bool {
-    dimensions.contains(&"valid_time") || header.variable("valid_time").is_some()
 }
 
 /// A scalar coordinate of a variable.

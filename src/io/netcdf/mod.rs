@@ -11,6 +11,7 @@ mod header;
 mod layout;
 mod library;
 mod packing;
+mod probe;
 mod read;
 mod roles;
 mod sniff;
@@ -22,6 +23,7 @@ mod wind_options;
 mod wind_part;
 
 pub use error::NetcdfError;
+pub use probe::{probe, probe_with};
 pub use spectra::*;
 pub use wind::{WindKind, WindSource, open_wind};
 pub use wind_options::{DirectionSense, WindOptions};

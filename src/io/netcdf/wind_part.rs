@@ -93,12 +93,15 @@ pub(super) fn part(
                 .variable(&name)
                 .filter(|time| time.number_type().is_some())
                 .ok_or_else(|| refuse(format!("there is no time variable `{name}` for it (set `wind.time`)")))?;
-            if time.dimensions.len() > 1 {
+            if reader.header.shape(time).iter().filter(|length| **length != 1).count() > 1 {
                 return Err(refuse(format!(
                     "its time `{name}` has several dimensions (a forecast with lead times?); choose one lead time first"
                 )));
             }
-            if time.text("standard_name") == Some("forecast_reference_time") && options.time.is_none() {
+            let long = time.text("long_name").unwrap_or_default().to_lowercase();
+            let is_start = time.text("standard_name") == Some("forecast_reference_time")
+                || ["initial time", "reference time", "start of the forecast"].iter().any(|words| long.contains(words));
+            if is_start && options.time.is_none() && !is_analysis(reader, variable) {
                 return Err(refuse(format!(
                     "its time `{name}` is when forecasts start, not when they are valid (set `wind.time` to the variable of valid times)"
                 )));
@@ -130,6 +133,17 @@ pub(super) fn part(
     Ok((part, steps))
 }
 
+/// Whether all lead times that a file states are zero, so that a forecast's start is also when it is valid.
+fn is_analysis(reader: &Reader, variable: &Variable) -> bool {
+    let named = variable.text("coordinates").unwrap_or_default();
+    let of_field: Vec<&str> = named.split_whitespace().chain(reader.header.dimension_names(variable)).collect();
+    let leads = reader.header.variables.iter().filter(|other| {
+        of_field.contains(&other.name.as_str()) && other.text("standard_name") == Some("forecast_period")
+    });
+    let leads: Vec<f64> = leads.flat_map(|lead| reader.coordinate(lead).unwrap_or(vec![f64::NAN])).collect();
+    !leads.is_empty() && leads.iter().all(|lead| *lead == 0.0)
+}
+
 /// Which stored steps are preliminary: archives write the version of each step along the time, 1 for final data and 5 for
 /// preliminary ("0001", "0005" as texts).
 fn preliminary_steps(reader: &Reader, variable: &Variable, step: usize) -> Vec<bool> {
@@ -155,6 +169,11 @@ fn direction_to_from_degrees(variable: &Variable, units: Option<&str>, options: 
     };
     let standard = variable.text("standard_name").unwrap_or_default();
     let long = variable.text("long_name").unwrap_or_default().to_lowercase();
+    let of_grid = long.contains("grid")
+        && ["relative to", "respect to", "grid north", "from grid"].iter().any(|w| long.contains(w));
+    if of_grid && options.direction_sense.is_none() {
+        return Err("it counts from the grid's axes, not from north; expected a direction from true north (where both are the same, set `wind.direction_sense` to \"from\" or \"to\")".to_owned());
+    }
     let sense = options.direction_sense.or(match standard {
         "wind_from_direction" => Some(DirectionSense::From),
         "wind_to_direction" => Some(DirectionSense::To),

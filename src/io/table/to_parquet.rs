@@ -18,7 +18,14 @@ const ZSTD_LEVEL: i32 = 3;
 
 /// The file, reachable again after the library is done with it.
 #[derive(Debug, Clone)]
-struct SharedFile(Arc<Mutex<Option<BufWriter<ReplaceFile>>>>);
+struct SharedFile(Arc<Mutex<Slot>>);
+
+#[derive(Debug)]
+struct Slot {
+    file: Option<BufWriter<ReplaceFile>>,
+    /// Why the system refused to write. The library turns it into an error of its own, which does not tell.
+    refused: Option<std::io::ErrorKind>,
+}
 
 impl Write for SharedFile {
     fn write(&mut self, bytes: &[u8]) -> std::io::Result<usize> {
@@ -33,7 +40,22 @@ impl Write for SharedFile {
 impl SharedFile {
     fn with<T>(&self, act: impl FnOnce(&mut BufWriter<ReplaceFile>) -> std::io::Result<T>) -> std::io::Result<T> {
         let mut slot = self.0.lock().map_err(|_| std::io::Error::other("the writer was abandoned"))?;
-        slot.as_mut().map_or_else(|| Err(std::io::Error::other("the file is closed")), act)
+        let done = slot.file.as_mut().map_or_else(|| Err(std::io::Error::other("the file is closed")), act);
+        if let Err(error) = &done {
+            slot.refused = Some(error.kind());
+        }
+        done
+    }
+
+    /// The library's error; where the system refused to write, that.
+    fn error(&self, path: &Path, error: polars::error::PolarsError) -> TableError {
+        match self.0.lock().ok().and_then(|slot| slot.refused) {
+            Some(kind) => {
+                let source = std::io::Error::new(kind, error.to_string());
+                TableError::Write(crate::io::replace_file::WriteError::Write { path: path.to_owned(), source })
+            }
+            None => encode(path, error),
+        }
     }
 }
 
@@ -63,27 +85,30 @@ fn encode(path: &Path, error: polars::error::PolarsError) -> TableError {
 impl PartWriter {
     pub(super) fn new(file: ReplaceFile, first: &Table) -> Result<Self, TableError> {
         let path = file.path().to_owned();
-        let file = SharedFile(Arc::new(Mutex::new(Some(BufWriter::with_capacity(1 << 18, file)))));
+        let file = SharedFile(Arc::new(Mutex::new(Slot {
+            file: Some(BufWriter::with_capacity(1 << 18, file)),
+            refused: None,
+        })));
         let frame = frame(first).map_err(|error| encode(&path, error))?;
         let level = ZstdLevel::try_new(ZSTD_LEVEL).map_err(|error| encode(&path, error))?;
         let batched = ParquetWriter::new(file.clone())
             .with_compression(ParquetCompression::Zstd(Some(level)))
             .with_statistics(StatisticsOptions::full())
             .batched(frame.schema())
-            .map_err(|error| encode(&path, error))?;
+            .map_err(|error| file.error(&path, error))?;
         Ok(Self { path, file, batched })
     }
 
     pub(super) fn append(&mut self, table: &Table) -> Result<(), TableError> {
         let frame = frame(table).map_err(|error| encode(&self.path, error))?;
-        self.batched.write_batch(&frame).map_err(|error| encode(&self.path, error))
+        self.batched.write_batch(&frame).map_err(|error| self.file.error(&self.path, error))
     }
 
     pub(super) fn finish(self) -> Result<(), TableError> {
         let Self { path, file, batched } = self;
-        batched.finish().map_err(|error| encode(&path, error))?;
+        batched.finish().map_err(|error| file.error(&path, error))?;
         drop(batched);
-        let slot = file.0.lock().ok().and_then(|mut slot| slot.take());
+        let slot = file.0.lock().ok().and_then(|mut slot| slot.file.take());
         let buffered = slot.expect("the file is there until it is finished");
         let failed = |source| crate::io::replace_file::WriteError::Write { path: path.clone(), source };
         let whole = buffered.into_inner().map_err(|error| failed(error.into_error()))?;

@@ -122,6 +122,22 @@ fn what_cannot_be_right_is_refused_in_one_line() {
                 "its time `time` is when forecasts start, not when they are valid (set `wind.time` to the variable of valid times)",
             ),
         ),
+        (
+            &["t11_initial.nc"],
+            &[],
+            one_of(
+                "u10",
+                "its time `time` is when forecasts start, not when they are valid (set `wind.time` to the variable of valid times)",
+            ),
+        ),
+        (
+            &["t11_named.nc"],
+            &[],
+            one_of(
+                "u10",
+                "it is a forecast with 4 lead times along `step`, whose valid times overlap; choose one lead time a valid time first",
+            ),
+        ),
         (&["d02_members.nc"], &[], one_of("uwind", "it has 3 ensemble members (0 to 2); set `wind.member`")),
         (
             &["d02_members.nc"],
