@@ -1,10 +1,11 @@
 //! Gridded fields: what a source is, which nodes a site needs, and the blocks in which storage hands them over.
 
-use crate::model::{FlagSet, SourceId};
+use crate::model::{FlagSet, Scattered, SourceId};
 use crate::numerics::axis::Axis;
 use crate::units::{Instant, Window};
 use serde::Serialize;
 use std::ops::Range;
+use std::sync::Arc;
 
 /// How the nodes of a field lie.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize)]
@@ -89,13 +90,63 @@ pub struct Stencil {
     pub flags: FlagSet,
 }
 
-/// A rectilinear grid.
+/// Where the nodes of a field lie.
 #[derive(Debug, Clone, PartialEq)]
-pub struct Grid {
-    /// Latitudes, degrees north.
-    pub latitude: Axis,
-    /// Longitudes, degrees east.
-    pub longitude: Axis,
+pub enum Grid {
+    /// Latitude and longitude are axes.
+    Axes {
+        /// Latitudes, degrees north.
+        latitude: Axis,
+        /// Longitudes, degrees east.
+        longitude: Axis,
+    },
+    /// Every node has a place of its own.
+    Scattered(Arc<Scattered>),
+}
+
+impl Grid {
+    /// How the nodes lie.
+    pub fn layout(&self) -> Layout {
+        match self {
+            Self::Axes { .. } => Layout::Rectilinear,
+            Self::Scattered(nodes) => nodes.layout(),
+        }
+    }
+
+    /// Rows and columns.
+    pub fn size(&self) -> (usize, usize) {
+        match self {
+            Self::Axes { latitude, longitude } => (latitude.len(), longitude.len()),
+            Self::Scattered(nodes) => nodes.size(),
+        }
+    }
+
+    /// South, north, west and east limits, degrees.
+    pub fn limits(&self) -> [f64; 4] {
+        match self {
+            Self::Axes { latitude, longitude } => {
+                let ((south, north), (west, east)) = (latitude.limits(), longitude.limits());
+                [south, north, west, east]
+            }
+            Self::Scattered(nodes) => nodes.limits(),
+        }
+    }
+
+    /// Whether it closes around the globe.
+    pub fn is_periodic(&self) -> bool {
+        matches!(self, Self::Axes { longitude, .. } if longitude.is_periodic())
+    }
+
+    /// Latitude and longitude of a node, degrees, longitude from -180 to 180.
+    pub fn place(&self, node: NodeId) -> Option<(f64, f64)> {
+        match self {
+            Self::Axes { latitude, longitude } => {
+                let longitude = (longitude.value_at(node.column)? + 180.0).rem_euclid(360.0) - 180.0;
+                Some((latitude.value_at(node.row)?, longitude))
+            }
+            Self::Scattered(nodes) => nodes.place(node.row, node.column),
+        }
+    }
 }
 
 /// What is known of a field from its headers.

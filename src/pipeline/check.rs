@@ -158,8 +158,6 @@ fn check_wind(
     let mut check = match (&wind.grid, &wind.input.origin) {
         (Some(source), _) => {
             let meta = source.meta();
-            let (south, north) = meta.grid.latitude.limits();
-            let (west, east) = meta.grid.longitude.limits();
             for site in sites {
                 let Some(place) = site.track.nominal() else { continue };
                 if let Err(why) = stencil(&meta.grid, place, &crate::model::SpatialRule::default()) {
@@ -177,9 +175,9 @@ fn check_wind(
                 files: source.files().iter().map(|(path, format)| format!("{} ({format})", path.display())).collect(),
                 variables: source.variables().to_vec(),
                 height_m: meta.height_m,
-                limits_deg: Some([south, north, west, east]),
-                periodic: meta.grid.longitude.is_periodic(),
-                nodes: Some([meta.grid.latitude.len(), meta.grid.longitude.len()]),
+                limits_deg: Some(meta.grid.limits()),
+                periodic: meta.grid.is_periodic(),
+                nodes: Some(meta.grid.size().into()),
                 max_gap_h: source.max_gap_ms() as f64 / 3.6e6,
                 notes: source.warnings().to_vec(),
                 ..steps_check(&meta.steps, source.max_gap_ms())

@@ -250,13 +250,11 @@ fn detail(source: &WindSource, why: Missing, around: &[Instant]) -> String {
     let meta = source.meta();
     match why {
         Missing::OutsideGrid => {
-            let (south, north) = meta.grid.latitude.limits();
-            let (west, east) = meta.grid.longitude.limits();
-            if meta.grid.latitude.len() == 1 || meta.grid.longitude.len() == 1 {
+            let [south, north, west, east] = meta.grid.limits();
+            let (rows, columns) = meta.grid.size();
+            if rows == 1 || columns == 1 {
                 return format!(
-                    "the grid has {} x {} nodes from {south} to {north} degrees north and from {west} to {east} degrees east, which does not surround a site; the nearest node can be taken (`match.spatial = \"nearest\"`)",
-                    meta.grid.latitude.len(),
-                    meta.grid.longitude.len()
+                    "the grid has {rows} x {columns} nodes from {south} to {north} degrees north and from {west} to {east} degrees east, which does not surround a site; the nearest node can be taken (`match.spatial = \"nearest\"`)"
                 );
             }
             format!("the grid runs from {south} to {north} degrees north and from {west} to {east} degrees east")

@@ -79,7 +79,10 @@ pub fn sample_wind(
         .collect::<BTreeSet<_>>()
         .into_iter()
         .collect();
-    let Decoded { values, preliminary } = decode_all(source, &nodes, &steps, window, progress)?;
+    let Decoded { mut values, preliminary } = decode_all(source, &nodes, &steps, window, progress)?;
+    if source.kind() == WindKind::Components {
+        turn_to_east(&meta.grid, &nodes, &mut values);
+    }
     let all = sites
         .par_iter()
         .zip(&stencils)
@@ -124,6 +127,21 @@ pub fn sample_wind(
         })
         .collect();
     Ok(all)
+}
+
+/// Turns components along a grid's axes to east and north, node by node.
+fn turn_to_east(grid: &Grid, nodes: &[NodeId], values: &mut [Vec<f64>]) {
+    let (Grid::Scattered(places), [first, second]) = (grid, values) else { return };
+    if !places.is_grid_relative() || nodes.is_empty() {
+        return;
+    }
+    let turns: Vec<(f64, f64)> =
+        nodes.iter().map(|node| places.x_axis(node.row, node.column).unwrap_or((f64::NAN, f64::NAN))).collect();
+    for (along, across) in first.chunks_mut(nodes.len()).zip(second.chunks_mut(nodes.len())) {
+        for ((x, y), (cos, sin)) in along.iter_mut().zip(across).zip(&turns) {
+            (*x, *y) = (*x * cos - *y * sin, *x * sin + *y * cos);
+        }
+    }
 }
 
 /// The steps within a window and one on either side.
@@ -228,8 +246,7 @@ fn nodes_used(grid: &Grid, site: &Site, stencils: &Stencils) -> Vec<NodeUse> {
         .nodes
         .iter()
         .filter_map(|(node, weight)| {
-            let latitude_deg = grid.latitude.value_at(node.row)?;
-            let longitude_deg = (grid.longitude.value_at(node.column)? + 180.0).rem_euclid(360.0) - 180.0;
+            let (latitude_deg, longitude_deg) = grid.place(*node)?;
             let distance_km = distance_km(place, Point::new(latitude_deg, longitude_deg).ok()?);
             Some(NodeUse { latitude_deg, longitude_deg, weight: *weight, distance_km })
         })

@@ -3,6 +3,7 @@
 use super::error::NetcdfError;
 use super::header::{Header, Variable};
 use super::read::Reader;
+use super::scattered::places;
 use super::time_axis::looks_like_time;
 use super::wind_options::WindOptions;
 use crate::model::{Grid, Layout};
@@ -136,18 +137,25 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
     let refuse =
         |problem: String| NetcdfError::Variable { path: header.path.clone(), variable: variable.name.clone(), problem };
     let names = header.dimension_names(variable);
-    let mapping = grid_mapping(header, variable);
-    if let Some(layout @ (Layout::RotatedPole | Layout::Projected)) = mapping {
-        return Err(refuse(not_sampled(layout)));
-    }
-    let mut places = [None; 3];
+    let mut axes = [None; 3];
     if let Some(pressure) = scalar(reader, variable, "air_pressure") {
         return Err(refuse(format!("it is at an air pressure of {pressure}; expected a wind near the surface")));
     }
     let height_m = scalar(reader, variable, "height").or_else(|| super::roles::height_in_name_m(variable));
     let mut rest = Rest { fixed: vec![vec![0_u64; names.len()]], height_m, notes: Vec::new() };
     let time = time_of(header, variable, options);
+    let scattered = places(reader, variable, options)?;
+    let own = |place: usize| scattered.as_ref().is_some_and(|found| found.row == Some(place) || found.column == place);
+    if let Some((of_time, _)) = time.as_ref().filter(|(place, _)| own(*place)) {
+        return Err(refuse(format!(
+            "its latitude and longitude change along `{}`, its time; expected nodes that stay (give the wind of a ship or a drifting buoy as a table)",
+            names[*of_time]
+        )));
+    }
     for (place, name) in names.iter().enumerate() {
+        if own(place) {
+            continue;
+        }
         let axis = match (&time, axis_of(header, name, options)) {
             (Some((of_time, _)), _) if *of_time == place => Axes::Time,
             // The start of the one forecast in the file; the time runs along another dimension.
@@ -161,30 +169,36 @@ pub(super) fn placement(reader: &Reader, variable: &Variable, options: &WindOpti
             _ => None,
         };
         if let Some(wanted) = wanted {
-            if places[wanted].is_some() {
+            if axes[wanted].is_some() {
                 return Err(refuse(format!(
                     "two of its dimensions ({}) could be the same axis; set `wind.time`, `wind.latitude`, `wind.longitude`",
                     names.join(", ")
                 )));
             }
-            places[wanted] = Some(place);
+            axes[wanted] = Some(place);
             continue;
         }
         let is_valid_time = time.as_ref().is_some_and(|(_, name)| name == "valid_time");
         rest.take(reader, variable, options, (place, axis), is_valid_time)?;
     }
-    let Rest { fixed, height_m, notes } = rest;
+    let Rest { fixed, height_m, mut notes } = rest;
     if let (Some(wanted_m), Some(found_m)) = (options.height_m, height_m)
         && (wanted_m - found_m).abs() > 1e-6
     {
         return Err(refuse(format!("it is at {found_m} m, but `wind.height_m` asks for {wanted_m} m")));
     }
-    let [step, row, column] = places;
+    let [step, row, column] = axes;
     let time = match (time, step) {
         (Some((_, name)), _) => Some(name),
         (None, place) => place.map(|place| names[place].to_owned()),
     };
-    let grid = grid(reader, variable, &names, row, column, options)?;
+    let (row, column, grid) = match scattered {
+        Some(found) => {
+            notes.extend(found.note);
+            (found.row, Some(found.column), found.grid)
+        }
+        None => (row, column, grid(reader, variable, &names, row, column, options)?),
+    };
     Ok(Placement { step, row, column, fixed, time, grid, height_m, notes })
 }
 
@@ -359,17 +373,6 @@ fn not_sampled(layout: Layout) -> String {
     )
 }
 
-/// The layout that a variable's grid mapping states, where it is not that of plain latitudes and longitudes.
-fn grid_mapping(header: &Header, variable: &Variable) -> Option<Layout> {
-    // The attribute may hold "name: coordinates" pairs (CF section 5.6).
-    let name = variable.text("grid_mapping")?.split([':', ' ']).next()?;
-    match header.variable(name)?.text("grid_mapping_name")? {
-        "latitude_longitude" => None,
-        "rotated_latitude_longitude" => Some(Layout::RotatedPole),
-        _ => Some(Layout::Projected),
-    }
-}
-
 /// A scalar coordinate of a variable.
 fn scalar(reader: &Reader, variable: &Variable, standard_name: &str) -> Option<f64> {
     let names = variable.text("coordinates")?;
@@ -444,7 +447,7 @@ fn grid(
             problem: format!("it has the value {value}; expected latitudes of -90 to 90 degrees"),
         });
     }
-    Ok(Grid {
+    Ok(Grid::Axes {
         latitude: Axis::linear(&latitudes).map_err(|error| wrong(&latitude_name, error))?,
         longitude: Axis::longitude(&longitudes).map_err(|error| wrong(&longitude_name, error))?,
     })

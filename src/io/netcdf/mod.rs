@@ -14,6 +14,7 @@ mod packing;
 mod probe;
 mod read;
 mod roles;
+mod scattered;
 mod sniff;
 mod spectra;
 mod time_axis;

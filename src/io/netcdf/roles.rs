@@ -20,7 +20,7 @@ pub(super) struct Role {
 pub(super) const EASTWARD: Role = Role {
     wanted: "the eastward wind",
     key: "wind.eastward",
-    standard_names: &["eastward_wind", "x_wind"],
+    standard_names: &["eastward_wind", "x_wind", "grid_eastward_wind"],
     short_names: &[
         "u10",
         "10u",
@@ -42,7 +42,7 @@ pub(super) const EASTWARD: Role = Role {
 pub(super) const NORTHWARD: Role = Role {
     wanted: "the northward wind",
     key: "wind.northward",
-    standard_names: &["northward_wind", "y_wind"],
+    standard_names: &["northward_wind", "y_wind", "grid_northward_wind"],
     short_names: &[
         "v10",
         "10v",
@@ -167,6 +167,11 @@ fn is_something_else(variable: &Variable) -> bool {
     let of_a_role =
         [&EASTWARD, &NORTHWARD, &SPEED, &DIRECTION].iter().any(|role| role.standard_names.contains(&standard.as_str()));
     of_a_role || !(standard.contains("wind") || standard == "unknown")
+}
+
+/// Whether a variable is recognised as a speed.
+pub(super) fn is_speed(variable: &Variable) -> bool {
+    SPEED.is_named(variable) || DIRECTION.is_named(variable)
 }
 
 /// The height that a variable's name or long name carries: u10 is at 10 m, "100 metre U wind component" at 100 m.

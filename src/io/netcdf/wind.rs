@@ -9,7 +9,7 @@ use super::wind_merge::{grid_words, merge, same_grid, usual_step_ms};
 use super::wind_options::WindOptions;
 use super::wind_part::{Part, part};
 use super::{classic, hdf5};
-use crate::model::{Block, FieldMeta, FieldSource, FlagSet, Layout, NodeId, NodeRequest, Slab, SourceId};
+use crate::model::{Block, FieldMeta, FieldSource, FlagSet, NodeId, NodeRequest, Slab, SourceId};
 use crate::units::Instant;
 use std::path::{Path, PathBuf};
 
@@ -110,7 +110,7 @@ pub fn open_wind(source: SourceId, files: &[PathBuf], options: &WindOptions) -> 
         notes.push(format!("the wind is that at {height_m} m, not at 10 m (set `wind.height_m` to choose or confirm)"));
     }
     notes.dedup();
-    let meta = FieldMeta { source, layout: Layout::Rectilinear, grid, steps, height_m, flags, notes };
+    let meta = FieldMeta { source, layout: grid.layout(), grid, steps, height_m, flags, notes };
     Ok(WindSource { meta, kind, readers, parts, max_gap_ms, variables })
 }
 

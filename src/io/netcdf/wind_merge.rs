@@ -11,12 +11,9 @@ const SAME_PLACE_DEG: f64 = 1e-4;
 
 /// A grid in words.
 pub(super) fn grid_words(grid: &Grid) -> String {
-    let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
-    format!(
-        "{} x {} nodes from {south} to {north} degrees north and {west} to {east} degrees east",
-        grid.latitude.len(),
-        grid.longitude.len()
-    )
+    let [south, north, west, east] = grid.limits();
+    let (rows, columns) = grid.size();
+    format!("{rows} x {columns} nodes from {south} to {north} degrees north and {west} to {east} degrees east")
 }
 
 /// Brings the steps of all parts on one time line: the steps at which every component is there.
@@ -66,7 +63,19 @@ pub(super) fn same_grid(a: &Grid, b: &Grid) -> bool {
     let same = |a: &crate::numerics::axis::Axis, b: &crate::numerics::axis::Axis| {
         a.len() == b.len() && a.nodes().zip(b.nodes()).all(|(a, b)| a.0 == b.0 && (a.1 - b.1).abs() < SAME_PLACE_DEG)
     };
-    same(&a.latitude, &b.latitude) && same(&a.longitude, &b.longitude)
+    match (a, b) {
+        (Grid::Axes { latitude, longitude }, Grid::Axes { latitude: other_latitude, longitude: other_longitude }) => {
+            same(latitude, other_latitude) && same(longitude, other_longitude)
+        }
+        (Grid::Scattered(a), Grid::Scattered(b)) => {
+            a.size() == b.size()
+                && a.is_grid_relative() == b.is_grid_relative()
+                && a.nodes().zip(b.nodes()).all(|(a, b)| {
+                    (a.0, a.1) == (b.0, b.1) && (0..3).all(|k| (a.2[k] - b.2[k]).abs() < SAME_PLACE_DEG.to_radians())
+                })
+        }
+        _ => false,
+    }
 }
 
 /// The most common time between steps, ms.

@@ -22,6 +22,8 @@ pub struct WindOptions {
     pub direction: Option<String>,
     /// Sense of the direction.
     pub direction_sense: Option<DirectionSense>,
+    /// Whether components are along the grid's axes (true) or towards east and north (false).
+    pub grid_relative: Option<bool>,
     /// Unit of speed or components: "m/s", "knots", "km/h".
     pub units: Option<String>,
     /// Height to choose, m.

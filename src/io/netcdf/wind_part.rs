@@ -8,7 +8,7 @@ use super::read::Reader;
 use super::time_axis;
 use super::wind::WindKind;
 use super::wind_options::{DirectionSense, WindOptions, speed_unit_m_s};
-use crate::model::{Flag, FlagSet};
+use crate::model::{Flag, FlagSet, Grid};
 use crate::units::Instant;
 
 /// A valid range that leaves less than this of the winds is worth a remark, m/s.
@@ -70,7 +70,9 @@ pub(super) fn part(
             variable.name
         ));
     }
-    if matches!(variable.text("standard_name"), Some("x_wind" | "y_wind")) {
+    if matches!(variable.text("standard_name"), Some("x_wind" | "y_wind"))
+        && matches!(placement.grid, Grid::Axes { .. })
+    {
         notes.push(format!(
             "variable `{}` is along the grid's axes; on axes of latitude and longitude that is east and north",
             variable.name

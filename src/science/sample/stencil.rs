@@ -1,7 +1,7 @@
 //! The nodes that a place needs.
 
 use crate::model::{Flag, FlagSet, Grid, Missing, NodeId, Point, SpatialRule, Stencil};
-use crate::numerics::axis::Bracket;
+use crate::numerics::axis::{Axis, Bracket};
 use geo::Distance;
 
 /// Distance along the sphere, km (haversine, mean radius of the Earth), to the millimetre: beyond that platforms differ.
@@ -13,11 +13,21 @@ pub fn distance_km(a: Point, b: Point) -> f64 {
 /// Mean radius of the Earth, km: (2a + b)/3 of WGS84 (NIMA TR8350.2).
 const EARTH_RADIUS_KM: f64 = 6_371.008_771_4;
 
+/// Latitude and longitude as axes.
+struct Axes<'a> {
+    latitude: &'a Axis,
+    longitude: &'a Axis,
+}
+
 /// The nodes that a place needs under a rule.
 ///
 /// # Errors
 /// The reason, when the place lies outside the grid or too far from its nodes.
 pub fn stencil(grid: &Grid, place: Point, rule: &SpatialRule) -> Result<Stencil, Missing> {
+    let grid = match grid {
+        Grid::Axes { latitude, longitude } => &Axes { latitude, longitude },
+        Grid::Scattered(nodes) => return super::scattered::stencil(nodes, place, rule),
+    };
     match *rule {
         SpatialRule::Bilinear(_) => bilinear(grid, place),
         SpatialRule::Nearest { max_distance_km } => {
@@ -41,7 +51,7 @@ pub fn stencil(grid: &Grid, place: Point, rule: &SpatialRule) -> Result<Stencil,
     }
 }
 
-fn bilinear(grid: &Grid, place: Point) -> Result<Stencil, Missing> {
+fn bilinear(grid: &Axes<'_>, place: Point) -> Result<Stencil, Missing> {
     let column = grid.longitude.bracket_longitude(place.longitude_deg()).ok_or(Missing::OutsideGrid)?;
     let Some(row) = grid.latitude.bracket(place.latitude_deg()) else {
         return polar(grid, place).ok_or(Missing::OutsideGrid);
@@ -66,7 +76,7 @@ fn ends(bracket: Bracket) -> Vec<(usize, f64)> {
 
 /// Beyond the last row of a grid that closes around the globe and comes within one row of the pole: the last row at the
 /// site's longitude, flagged. (A mean over the row would be wrong: components of one wind turn with the longitude.)
-fn polar(grid: &Grid, place: Point) -> Option<Stencil> {
+fn polar(grid: &Axes<'_>, place: Point) -> Option<Stencil> {
     if !grid.longitude.is_periodic() {
         return None;
     }
@@ -88,7 +98,7 @@ fn polar(grid: &Grid, place: Point) -> Option<Stencil> {
 }
 
 /// Nodes within a distance, nearest first; ties in stored order. Only rows and columns that can hold one are looked at.
-fn within(grid: &Grid, place: Point, radius_km: f64) -> Vec<(NodeId, f64)> {
+fn within(grid: &Axes<'_>, place: Point, radius_km: f64) -> Vec<(NodeId, f64)> {
     let radius = radius_km / EARTH_RADIUS_KM;
     // A little more than needed: the distance decides.
     let radius_deg = radius.to_degrees() * (1.0 + 1e-6) + 1e-6;
@@ -124,10 +134,9 @@ fn within(grid: &Grid, place: Point, radius_km: f64) -> Vec<(NodeId, f64)> {
 mod tests {
     use super::*;
     use crate::model::CoastRule;
-    use crate::numerics::axis::Axis;
 
     fn grid(latitudes: &[f64], longitudes: &[f64]) -> Grid {
-        Grid { latitude: Axis::linear(latitudes).unwrap(), longitude: Axis::longitude(longitudes).unwrap() }
+        Grid::Axes { latitude: Axis::linear(latitudes).unwrap(), longitude: Axis::longitude(longitudes).unwrap() }
     }
 
     fn rule() -> SpatialRule {
@@ -163,7 +172,10 @@ mod tests {
     #[test]
     fn beyond_the_last_row_of_a_global_grid_that_row_serves_with_a_flag() {
         let columns: Vec<f64> = (0..36).map(|k| f64::from(k) * 10.0).collect();
-        let grid = grid(&[-85.0, -75.0, 75.0, 85.0], &columns);
+        let rows = [-85.0, -75.0, 75.0, 85.0];
+        let far = grid(&[60.0, 61.0], &columns);
+        let regional = grid(&rows, &[0.0, 10.0, 20.0]);
+        let grid = grid(&rows, &columns);
         for (latitude, row) in [(89.0, 3), (90.0, 3), (-86.0, 0)] {
             let polar = stencil(&grid, Point::new(latitude, 12.0).unwrap(), &rule()).unwrap();
             assert_eq!(polar.flags, FlagSet::of(Flag::PoleRow));
@@ -171,14 +183,12 @@ mod tests {
             assert_eq!(nodes, [NodeId { row, column: 1 }, NodeId { row, column: 2 }]);
             assert!((polar.nodes[1].1 - 0.2).abs() < 1e-12);
         }
-        let regional = Grid { longitude: Axis::longitude(&[0.0, 10.0, 20.0]).unwrap(), ..grid.clone() };
         assert_eq!(stencil(&regional, Point::new(89.0, 12.0).unwrap(), &rule()), Err(Missing::OutsideGrid));
-        let far = Grid { latitude: Axis::linear(&[60.0, 61.0]).unwrap(), ..grid };
         assert_eq!(stencil(&far, Point::new(89.0, 12.0).unwrap(), &rule()), Err(Missing::OutsideGrid));
     }
 
     /// All nodes, one by one: what the search must give.
-    fn by_hand(grid: &Grid, place: Point, radius_km: f64) -> Vec<NodeId> {
+    fn by_hand(grid: &Axes<'_>, place: Point, radius_km: f64) -> Vec<NodeId> {
         let mut near: Vec<(f64, NodeId)> = Vec::new();
         for (row, latitude) in grid.latitude.nodes() {
             for (column, longitude) in grid.longitude.nodes() {
@@ -200,7 +210,8 @@ mod tests {
         ) {
             let columns: Vec<f64> = (0..72).map(|k| f64::from(k) * 5.0 - if turned == 0 { 0.0 } else { 180.0 }).collect();
             let rows: Vec<f64> = (0..37).map(|k| 90.0 - f64::from(k) * 5.0).collect();
-            let grid = grid(&rows, &columns);
+            let (latitude, longitude) = (Axis::linear(&rows).unwrap(), Axis::longitude(&columns).unwrap());
+            let grid = Axes { latitude: &latitude, longitude: &longitude };
             let place = Point::new(latitude, longitude).unwrap();
             let found: Vec<NodeId> = within(&grid, place, radius_km).into_iter().map(|(node, _)| node).collect();
             proptest::prop_assert_eq!(found, by_hand(&grid, place, radius_km));

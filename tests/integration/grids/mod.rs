@@ -2,6 +2,7 @@
 
 mod formats;
 mod hazards;
+mod layouts;
 mod properties;
 mod reference;
 mod refusals;

@@ -17,8 +17,7 @@ const UNITS_HINT: &str = "expected such as \"hours since 1900-01-01 00:00:00\" (
 
 #[test]
 fn what_cannot_be_right_is_refused_in_one_line() {
-    let curvilinear = "it lies on a curvilinear grid (two-dimensional latitude and longitude), which is not sampled; expected latitude and longitude as axes (regrid it first)";
-    let rotated = "it lies on a grid about a rotated pole, which is not sampled; expected latitude and longitude as axes (regrid it first)";
+    let rotated = "it lies on a grid about a rotated pole without latitude and longitude of its nodes; expected both as variables of two dimensions (add them, or regrid it first)";
     let one_of = |variable: &str, problem: &str| format!("variable `{variable}`: {problem}");
     for (names, settings, message) in [
         (
@@ -179,35 +178,16 @@ fn what_cannot_be_right_is_refused_in_one_line() {
             ),
         ),
         (&["d05_none.nc"], &[], one_of("u10", "it has no units; expected a speed such as m s-1 (set `wind.units`)")),
-        (&["d06_curvilinear.nc"], &[], one_of("u10", curvilinear)),
-        (&["d06_curvilinear_named.nc"], &[], one_of("u10", curvilinear)),
-        (&["d06_rotated.nc"], &[], one_of("u10", rotated)),
         (&["d06_rotated_unmapped.nc"], &[], one_of("u10", rotated)),
         (
             &["d06_projected.nc"],
             &[],
             one_of(
                 "u10",
-                "it lies on a grid in a map projection, which is not sampled; expected latitude and longitude as axes (regrid it first)",
+                "it lies on a grid in a map projection without latitude and longitude of its nodes; expected both as variables of two dimensions (add them, or regrid it first)",
             ),
         ),
         (&["d06_radians.nc"], &[], one_of("u10", "its latitude `lat` is in radians; expected degrees")),
-        (
-            &["d06_nodes.nc"],
-            &[],
-            one_of(
-                "u10",
-                "it lies on unstructured nodes, which is not sampled; expected latitude and longitude as axes (regrid it first)",
-            ),
-        ),
-        (
-            &["d06_stations.nc"],
-            &[],
-            one_of(
-                "u10",
-                "it lies on a list of stations, which is not sampled; expected latitude and longitude as axes (regrid it first)",
-            ),
-        ),
         (
             &["d03_heights.nc"],
             &["eastward=u10", "northward=v10", "height_m=100"],
