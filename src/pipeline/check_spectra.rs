@@ -73,13 +73,10 @@ pub(super) fn check_spectra(spectra: &OpenSpectra, sites: &[Site], problems: &mu
     }
     let place = match source.place() {
         SpectraPlace::Grid(grid) => {
-            let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
-            let around = if grid.longitude.is_periodic() { ", around the globe" } else { "" };
-            format!(
-                "grid: {} x {} nodes, {south} to {north} N, {west} to {east} E{around}",
-                grid.latitude.len(),
-                grid.longitude.len()
-            )
+            let [south, north, west, east] = grid.limits();
+            let (rows, columns) = grid.size();
+            let around = if grid.is_periodic() { ", around the globe" } else { "" };
+            format!("grid: {rows} x {columns} nodes, {south} to {north} N, {west} to {east} E{around}")
         }
         SpectraPlace::Stations { count, drifting } => {
             let drift = if drifting { ", drifting" } else { "" };

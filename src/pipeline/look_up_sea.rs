@@ -279,7 +279,7 @@ fn frequency_detail(why: Missing, axes: &SpectrumAxes) -> String {
 fn detail(source: &SpectraSource, why: Missing) -> String {
     match (why, source.place()) {
         (Missing::OutsideGrid, SpectraPlace::Grid(grid)) => {
-            let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
+            let [south, north, west, east] = grid.limits();
             format!("the grid runs from {south} to {north} degrees north and from {west} to {east} degrees east")
         }
         (Missing::OutsideTime, _) => match (source.steps().first(), source.steps().last()) {

@@ -197,8 +197,8 @@ fn describe_nodes(
         let (Ok(stencil), Some(place)) = (stencils.at(k), site.track.at(steps[k])) else { return Vec::new() };
         let position = |node: &NodeId| match source.place() {
             SpectraPlace::Grid(grid) => {
-                let longitude = (grid.longitude.value_at(node.column)? + 180.0).rem_euclid(360.0) - 180.0;
-                Point::new(grid.latitude.value_at(node.row)?, longitude).ok()
+                let (latitude, longitude) = grid.place(*node)?;
+                Point::new(latitude, longitude).ok()
             }
             SpectraPlace::Stations { .. } => source.stations_at(first + k).get(node.row).copied().flatten(),
         };

@@ -24,9 +24,9 @@ fn winds_on_grids_without_axes_agree_with_the_field_they_were_made_from() {
         };
         let rule = match case["rule"].as_str().unwrap() {
             "renormalise" => SpatialRule::Bilinear(CoastRule::Renormalise),
-            text => text.strip_prefix("nearest ").map_or_else(SpatialRule::default, |km| SpatialRule::Nearest {
-                max_distance_km: km.parse().unwrap(),
-            }),
+            text => text
+                .strip_prefix("nearest ")
+                .map_or_else(SpatialRule::default, |km| SpatialRule::Nearest { max_distance_km: km.parse().unwrap() }),
         };
         for quantity in ["eastward", "northward"] {
             let answer = ask_by(

@@ -142,7 +142,7 @@ fn one_thread_and_many_give_the_same_bits() {
         &["f02_scaleoffset.nc"],
     ] {
         let grid = opened(names).meta().grid.clone();
-        let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
+        let [south, north, west, east] = grid.limits();
         let sites: Vec<Site> = (0..9)
             .map(|k| f64::from(k) / 8.0)
             .map(|share| {

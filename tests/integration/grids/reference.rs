@@ -168,14 +168,14 @@ fn monthly_means_across_the_seam_are_flagged() {
     assert_eq!((answer.status, &answer.flags[..]), ("flagged", &[Flag::AveragedField.name()][..]));
     let source = open(&monthly, &[]).unwrap();
     let grid = &source.meta().grid;
-    assert!(grid.longitude.is_periodic());
-    assert_eq!((grid.latitude.len(), grid.longitude.len(), source.meta().steps.len()), (96, 192, 12));
+    assert!(grid.is_periodic());
+    assert_eq!((grid.size().0, grid.size().1, source.meta().steps.len()), (96, 192, 12));
     for (k, row, column, u, v) in [
         (0, 48, 0, 0.730_949_401_855_468_8, -2.848_933_219_909_668),
         (6, 10, 100, -1.940_889_358_520_507_8, -0.805_522_918_701_171_9),
         (11, 90, 191, -1.927_611_351_013_183_6, -1.252_449_035_644_531_2),
     ] {
-        let (latitude, longitude) = (grid.latitude.value_at(row).unwrap(), grid.longitude.value_at(column).unwrap());
+        let (latitude, longitude) = grid.place(underwind::model::NodeId { row, column }).unwrap();
         let series = sample(&source, latitude, longitude);
         close(series.eastward_m_s[k], u);
         close(series.northward_m_s[k], v);

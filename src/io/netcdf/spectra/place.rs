@@ -311,7 +311,7 @@ fn grid(
     if let Some(value) = latitudes.iter().find(|value| value.abs() > 90.001) {
         return Err(wrong(latitude_name, format!("it has the value {value}; expected latitudes of -90 to 90 degrees")));
     }
-    Ok(Sites::Grid(Grid {
+    Ok(Sites::Grid(Grid::Axes {
         latitude: Axis::linear(&latitudes).map_err(|error| wrong(latitude_name, format!("it is no axis: {error}")))?,
         longitude: Axis::longitude(&longitudes)
             .map_err(|error| wrong(longitude_name, format!("it is no axis: {error}")))?,
