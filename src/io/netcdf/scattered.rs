@@ -74,7 +74,6 @@ pub(super) fn places(
     finish(reader, variable, options, (row, column), size, (read(latitude)?, read(longitude)?), layout).map(Some)
 }
 
-#[expect(clippy::too_many_arguments, reason = "all of them describe one grid")]
 fn finish(
     reader: &Reader,
     variable: &Variable,

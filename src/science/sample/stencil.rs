@@ -210,8 +210,8 @@ mod tests {
         ) {
             let columns: Vec<f64> = (0..72).map(|k| f64::from(k) * 5.0 - if turned == 0 { 0.0 } else { 180.0 }).collect();
             let rows: Vec<f64> = (0..37).map(|k| 90.0 - f64::from(k) * 5.0).collect();
-            let (latitude, longitude) = (Axis::linear(&rows).unwrap(), Axis::longitude(&columns).unwrap());
-            let grid = Axes { latitude: &latitude, longitude: &longitude };
+            let (latitudes, longitudes) = (Axis::linear(&rows).unwrap(), Axis::longitude(&columns).unwrap());
+            let grid = Axes { latitude: &latitudes, longitude: &longitudes };
             let place = Point::new(latitude, longitude).unwrap();
             let found: Vec<NodeId> = within(&grid, place, radius_km).into_iter().map(|(node, _)| node).collect();
             proptest::prop_assert_eq!(found, by_hand(&grid, place, radius_km));
