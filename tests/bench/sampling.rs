@@ -70,7 +70,7 @@ fn main() -> Result<(), Failed> {
         let source = open_wind(SourceId("model".into()), std::slice::from_ref(&file), &WindOptions::default())?;
         let opened_s = start.elapsed().as_secs_f64();
         let grid = &source.meta().grid;
-        let ((south, north), (west, east)) = (grid.latitude.limits(), grid.longitude.limits());
+        let [south, north, west, east] = grid.limits();
         let sites = sites(table.clone(), [south, north, west, east])?;
         let series = pool.install(|| sample_wind(&source, &sites, None, &SpatialRule::default(), &Silent))?;
         let wall_s = start.elapsed().as_secs_f64();

@@ -6,6 +6,9 @@ use std::path::{Path, PathBuf};
 use std::process::{Command, Stdio};
 use std::time::{Duration, Instant};
 
+/// Moments of a run at which it is killed.
+const MOMENTS: u32 = 40;
+
 /// Every output file of a folder and its figures, with its bytes; hidden parts of killed runs apart.
 fn outputs(folder: &Path) -> (BTreeMap<PathBuf, Vec<u8>>, usize) {
     let (mut whole, mut parts) = (BTreeMap::new(), 0);
@@ -13,7 +16,7 @@ fn outputs(folder: &Path) -> (BTreeMap<PathBuf, Vec<u8>>, usize) {
     {
         let path = entry.unwrap().path();
         let name = path.file_name().unwrap().to_string_lossy().into_owned();
-        if name.starts_with('.') && name.ends_with(".part") {
+        if name.starts_with('.') && path.extension().is_some_and(|extension| extension == "part") {
             parts += 1;
         } else if path.is_file() {
             whole.insert(path.strip_prefix(folder).unwrap().to_owned(), std::fs::read(&path).unwrap());
@@ -74,7 +77,6 @@ fn a_run_killed_at_any_moment_leaves_each_file_whole_old_or_new() {
     assert!(differing > 5, "the two studies differ in {differing} files");
     study(at, "new", 3.0, "out");
     let (mut half_way, mut killed) = (0, 0);
-    const MOMENTS: u32 = 40;
     for moment in 0..MOMENTS {
         // The earlier result stands again before each run.
         for (name, bytes) in &expected_old {
