@@ -12,6 +12,7 @@ mod place;
 mod set;
 mod sites;
 mod spectra;
+mod spreading;
 mod study;
 mod wind;
 
@@ -22,5 +23,6 @@ pub use levels::{LevelsInput, level_options_from};
 pub use matching::{MatchSection, WindowSpeed};
 pub use sites::SitesInput;
 pub use spectra::{SpectraInput, spectra_options_from};
+pub use spreading::SpreadingSection;
 pub use study::{ReportSection, Study, TableFormat, read_study};
 pub use wind::{WindInput, WindOrigin, wind_options_from};

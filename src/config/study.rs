@@ -8,6 +8,7 @@ use super::matching::{MatchSection, RawMatch};
 use super::place::WindSpeedMS;
 use super::sites::{RawSite, RawSites, SitesInput};
 use super::spectra::{RawSpectra, SpectraInput};
+use super::spreading::{RawSpreading, SpreadingSection};
 use super::wind::{RawWind, WindInput};
 use serde::{Deserialize, Serialize};
 use std::path::{Path, PathBuf};
@@ -43,6 +44,8 @@ struct RawStudy {
     matching: RawMatch,
     #[serde(default)]
     relation: RawRelation,
+    #[serde(default)]
+    spreading: RawSpreading,
     #[serde(default)]
     report: RawReport,
     simulate: Option<Spanned<crate::science::simulate::Settings>>,
@@ -104,6 +107,8 @@ pub struct Study {
     pub matching: MatchSection,
     /// How level is fitted against wind speed.
     pub relation: RelationSection,
+    /// The sound of opposing waves and how spreading is compared with it.
+    pub spreading: SpreadingSection,
     /// What is drawn.
     pub report: ReportSection,
     /// A deployment to simulate.
@@ -162,6 +167,7 @@ impl RawStudy {
             exclude,
             matching: self.matching.resolve(complaint)?,
             relation: self.relation.resolve(complaint)?,
+            spreading: self.spreading.resolve(complaint)?,
             report: self.report.resolve(complaint)?,
             simulate: match self.simulate {
                 None => None,

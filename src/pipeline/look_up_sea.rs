@@ -46,8 +46,6 @@ const QUANTITIES: [(&str, &str); 15] = [
     (RADIATED, "dB re 1 uPa2/Hz"),
     (TAIL, "s-1"),
 ];
-/// The same frequency, as a share.
-const SAME_FREQUENCY: f64 = 1e-4;
 
 /// A quantity of the sea at a place and an instant.
 ///
@@ -173,25 +171,8 @@ fn nearest(axes: &SpectrumAxes, hz: f64) -> Option<usize> {
     WindowSea::nearest_frequency(&axes.frequency_hz, &axes.frequency_edges_hz, hz)
 }
 
-/// A number at a frequency: that of the bin where there is one, else between its neighbours along a straight line in log-log
-/// (plainly where one of them is zero).
 fn at_frequency(axes: &SpectrumAxes, values: &[f64], hz: f64) -> Result<f64, Missing> {
-    let frequency = &axes.frequency_hz;
-    if let Some(k) = frequency.iter().position(|f| (f / hz - 1.0).abs() < SAME_FREQUENCY) {
-        return Ok(values[k]);
-    }
-    let after = frequency.partition_point(|f| *f < hz);
-    if after == 0 || after == frequency.len() {
-        return Err(Missing::NoFrequency);
-    }
-    let (a, b) = (values[after - 1], values[after]);
-    let (low, high) = (frequency[after - 1], frequency[after]);
-    if a > 0.0 && b > 0.0 {
-        let share = libm::log(hz / low) / libm::log(high / low);
-        return Ok(libm::exp(libm::log(a) + share * (libm::log(b) - libm::log(a))));
-    }
-    let share = (hz - low) / (high - low);
-    Ok(a + share * (b - a))
+    crate::science::waves::at_frequency(axes, values, hz).ok_or(Missing::NoFrequency)
 }
 
 /// The density at a frequency and a direction of travel: the bins that hold them.
@@ -302,16 +283,5 @@ mod tests {
         names.sort_unstable();
         names.dedup();
         assert_eq!(names.len(), QUANTITIES.len());
-    }
-
-    // Closed form: a power law is a straight line in log-log.
-    #[test]
-    fn a_power_law_is_met_between_bins() {
-        let axes = SpectrumAxes::new(vec![0.1, 0.2, 0.4], None, vec![0.0, 1.5, 3.0, 4.5]).unwrap();
-        let values: Vec<f64> = axes.frequency_hz.iter().map(|f| f.powi(-5)).collect();
-        let found = at_frequency(&axes, &values, 0.3).unwrap();
-        assert!((found / 0.3_f64.powi(-5) - 1.0).abs() < 1e-12);
-        assert_eq!(at_frequency(&axes, &values, 0.05), Err(Missing::NoFrequency));
-        assert!((at_frequency(&axes, &[0.0, 2.0, 0.0], 0.15).unwrap() - 1.0).abs() < 1e-12);
     }
 }

@@ -4,6 +4,7 @@ use super::exclusion::Rules;
 use super::inputs::{Inputs, OpenLevels, OpenWind};
 use super::progress::Progress;
 use super::sampling::sample_wind;
+use super::sea::{Sea, bring_sea};
 use crate::Error;
 use crate::config::{Study, TableFormat, WindOrigin};
 use crate::io::levels::LevelNames;
@@ -33,6 +34,8 @@ pub struct Matched {
     pub conditions: Vec<Vec<Conditions>>,
     /// For each record, what the screen for short events found; empty where it is off.
     pub screened: Vec<Screened>,
+    /// The sea, where the study has spectra.
+    pub sea: Sea,
     /// How many pairs and rows are used, and why others are not.
     pub counts: Counts,
     /// What the reader should know.
@@ -118,7 +121,12 @@ pub fn bring_together(study: &Study, inputs: &Inputs, progress: &dyn Progress) -
         }
     }
     count_pairs(&records, &conditions, &mut counts);
-    let matched = Matched { records, series, conditions, screened, counts, remarks };
+    for spectra in &inputs.spectra {
+        let warnings = spectra.source.warnings().iter();
+        remarks.extend(warnings.map(|warning| format!("spectra `{}`: {warning}", spectra.input.id)));
+    }
+    let sea = bring_sea(study, inputs, &records, &series, &conditions, whole, progress)?;
+    let matched = Matched { records, series, conditions, screened, sea, counts, remarks };
     if matched.counts.used == 0 {
         return Err(nothing_in_common(inputs, &matched, whole));
     }
@@ -377,14 +385,20 @@ pub fn write_tables(
     let mut conditions_out = Output::create(study, folder, "conditions")?;
     let mut matchups_out = Output::create(study, folder, "matchups")?;
     for wind in &study.wind {
-        for (record, sources) in matched.records.iter().zip(&matched.conditions) {
+        for (number, (record, sources)) in matched.records.iter().zip(&matched.conditions).enumerate() {
             let Some(conditions) = sources.iter().find(|conditions| conditions.source == wind.id) else { continue };
-            conditions_out.append(&conditions_table(conditions, &record.sensor, &record.windows))?;
+            conditions_out.append(&conditions_table(
+                conditions,
+                matched.sea.conditions[number].first(),
+                &record.sensor,
+                &record.windows,
+            ))?;
             let step = (ROWS_AT_A_TIME / record.bands.len().max(1)).max(1);
             let mut start = 0;
             while start < record.windows.len() {
                 let end = (start + step).min(record.windows.len());
-                matchups_out.append(&matchups_table(record, conditions, &rules, start..end))?;
+                let sea = matched.sea.rows(study, record, number, 0, sources, start..end);
+                matchups_out.append(&matchups_table(record, conditions, sea.as_ref(), &rules, start..end))?;
                 start = end;
             }
             progress.advance(1);

@@ -1,14 +1,19 @@
 //! Conditions: one row per source, site and window.
 
 use super::sampled::repeated;
-use crate::model::{ColumnData, Conditions, Missing, Table, WindowWind};
+use crate::model::{ColumnData, Conditions, Missing, SeaConditions, Table, WindowWind};
 use crate::units::{Compass, Window};
 
-/// The wind of one source over a sensor's windows.
+/// The wind of one source over a sensor's windows, and the sea where there are spectra.
 ///
 /// # Panics
 /// When the windows are not those that the conditions were made for: a defect in the caller.
-pub fn conditions_table(conditions: &Conditions, sensor: &str, windows: &[Window]) -> Table {
+pub fn conditions_table(
+    conditions: &Conditions,
+    sea: Option<&SeaConditions>,
+    sensor: &str,
+    windows: &[Window],
+) -> Table {
     assert_eq!(windows.len(), conditions.wind.len(), "conditions of other windows");
     let rows = windows.len();
     let mut table = Table::default();
@@ -80,6 +85,9 @@ pub fn conditions_table(conditions: &Conditions, sensor: &str, windows: &[Window
         "why there is no wind for the window",
         ColumnData::from_texts(conditions.missing.iter().map(|why| why.map_or("", Missing::name))),
     );
+    if let Some(sea) = sea {
+        super::sea::push_conditions(&mut table, sea);
+    }
     table
 }
 

@@ -3,7 +3,7 @@
 use super::conditions::{from_direction_deg, push_windows};
 use super::sampled::repeated;
 use crate::model::{
-    BandLevels, ColumnData, Conditions, LevelKind, LevelStatistic, Missing, SensorRecord, Table, WindowWind,
+    BandLevels, ColumnData, Conditions, LevelKind, LevelStatistic, Missing, SeaRows, SensorRecord, Table, WindowWind,
 };
 use std::ops::Range;
 
@@ -14,6 +14,7 @@ use std::ops::Range;
 pub fn matchups_table(
     record: &SensorRecord,
     conditions: &Conditions,
+    sea: Option<&SeaRows<'_>>,
     rules: &[String],
     windows: Range<usize>,
 ) -> Table {
@@ -99,6 +100,9 @@ pub fn matchups_table(
         "direction that the mean wind comes from, clockwise from true north",
         wind(from_direction_deg),
     );
+    if let Some(sea) = sea {
+        super::sea::push_matchups(&mut table, record, sea);
+    }
     push_use(&mut table, record, conditions, rules, windows);
     table
 }

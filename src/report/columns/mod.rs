@@ -7,6 +7,7 @@ mod opposing;
 mod relation;
 mod replicates;
 mod sampled;
+mod sea;
 mod segments;
 mod sensitivity;
 

@@ -1,5 +1,6 @@
 //! Surface waves and the sound of opposing waves.
 
+mod band_sea;
 mod blend;
 mod from_moments;
 mod moments;
@@ -15,6 +16,7 @@ mod water;
 mod wind_sea;
 mod window_sea;
 
+pub use band_sea::*;
 pub use blend::*;
 pub use from_moments::*;
 pub use moments::*;
