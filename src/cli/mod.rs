@@ -48,6 +48,7 @@ pub fn main() -> ExitCode {
         Command::Sample(args) => sample::sample(args),
         Command::Match(args) => run::match_study(args, &terminal),
         Command::Fit(args) => fit::fit(args, &terminal),
+        Command::Spread(args) => run::spread(args, &terminal),
         Command::Report(args) => run::report(args, &terminal),
         Command::Run(args) => run::run(args, &terminal),
         Command::Simulate(args) => run::simulate(args, &terminal),

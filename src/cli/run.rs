@@ -5,7 +5,7 @@ use super::args::{RunArgs, SimulateArgs, StudyArgs};
 use super::terminal::{Terminal, print};
 use crate::config::{Study, read_study};
 use crate::pipeline::{self, Outcome, Stage};
-use crate::report::{relation_text, sensitivity_text};
+use crate::report::{relation_text, sensitivity_text, spreading_text};
 
 /// The study that a command names, with its output folder from the command line where given.
 fn study(args: &StudyArgs) -> Result<Study, Ending> {
@@ -37,7 +37,25 @@ pub(super) fn run(args: &RunArgs, terminal: &Terminal) -> Result<(), Ending> {
     let text = if args.json {
         pipeline::relations_json(&outcome.fitted)
     } else {
-        format!("{}\n{}\n{}", relation_text(&outcome.fitted), counts(&outcome), files(&study, &outcome))
+        let spreading = spreading_text(&outcome.spreading);
+        let spreading = if spreading.is_empty() { spreading } else { format!("{spreading}\n") };
+        format!("{}\n{spreading}{}\n{}", relation_text(&outcome.fitted), counts(&outcome), files(&study, &outcome))
+    };
+    print(&text).map_err(Ending::Exit)
+}
+
+/// `spread`: floors from a fit without intervals, which the comparison does not need.
+pub(super) fn spread(args: &RunArgs, terminal: &Terminal) -> Result<(), Ending> {
+    let mut study = study(&args.study)?;
+    study.relation.options.replicates = 0;
+    let outcome = pipeline::run(&study, Stage::Spread, terminal)?;
+    remarks(&outcome, terminal);
+    let text = if args.json {
+        let mut text = serde_json::to_string_pretty(&outcome.spreading).expect("plain data is JSON");
+        text.push('\n');
+        text
+    } else {
+        format!("{}\n{}", spreading_text(&outcome.spreading), files(&study, &outcome))
     };
     print(&text).map_err(Ending::Exit)
 }

@@ -17,6 +17,7 @@ mod sea;
 mod sensitivity;
 mod simulate;
 mod spectra_sampling;
+mod spreading;
 
 pub use check::{CheckReport, check_study};
 pub use check_spectra::SpectraCheck;

@@ -5,11 +5,12 @@ use super::inputs::open_inputs;
 use super::matching::{Counts, bring_together, write_tables};
 use super::progress::Progress;
 use super::provenance::{PROGRAM, Provenance, input_records, write_provenance};
-use super::reporting::{ReportInput, write_report};
+use super::reporting::{ReportInput, write_report, write_spread_figures};
 use super::sensitivity::{refit_all, write_sensitivity};
+use super::spreading::{compare_spreading, write_spreading};
 use crate::Error;
 use crate::config::Study;
-use crate::model::{Fitted, Refit};
+use crate::model::{Fitted, Refit, SensorSpreading};
 use std::path::{Path, PathBuf};
 
 /// What is written.
@@ -23,6 +24,8 @@ pub enum Stage {
     Sensitivity,
     /// Figures and page.
     Report,
+    /// The spreading comparison: tables, figures.
+    Spread,
     /// All of these.
     Everything,
 }
@@ -36,6 +39,8 @@ pub struct Outcome {
     pub counts: Counts,
     /// Remarks.
     pub remarks: Vec<String>,
+    /// The spreading comparison; empty without spectra.
+    pub spreading: Vec<SensorSpreading>,
     /// Fits under other choices; empty unless asked for.
     pub refits: Vec<Refit>,
     /// Files written.
@@ -47,6 +52,9 @@ pub struct Outcome {
 /// # Errors
 /// When an input cannot be used, when the inputs have nothing in common, or when an output cannot be written.
 pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outcome, Error> {
+    if stage == Stage::Spread && study.spectra.is_empty() {
+        return Err(Error::Lacking { study: study.path.clone(), section: "[[spectra]]" });
+    }
     let inputs = open_inputs(study)?;
     // Checksums keep one core busy while the level tables, which are read in order, keep another.
     let files = inputs.files(study);
@@ -62,6 +70,16 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     if matches!(stage, Stage::Fit | Stage::Sensitivity | Stage::Everything) {
         written.extend(write_relations(&fitted, &study.tables, &study.output)?);
     }
+    let mut spreading = Vec::new();
+    if matches!(stage, Stage::Spread | Stage::Report | Stage::Everything) {
+        spreading = compare_spreading(study, &matched, &fitted.bands, progress);
+    }
+    if matches!(stage, Stage::Spread | Stage::Everything) && !spreading.is_empty() {
+        written.extend(write_spreading(study, &spreading, &study.output)?);
+    }
+    if stage == Stage::Spread {
+        written.extend(write_spread_figures(study, &matched, &spreading, &study.output)?);
+    }
     let mut refits = Vec::new();
     if stage == Stage::Sensitivity {
         let (all, remarks) = refit_all(study, &inputs, &matched, &fitted.bands, progress)?;
@@ -70,7 +88,14 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
         refits = all;
     }
     if matches!(stage, Stage::Report | Stage::Everything) {
-        let input = ReportInput { study, sites: &inputs.sites, matched: &matched, fitted: &fitted, inputs: &records };
+        let input = ReportInput {
+            study,
+            sites: &inputs.sites,
+            matched: &matched,
+            fitted: &fitted,
+            spreading: &spreading,
+            inputs: &records,
+        };
         written.extend(write_report(&input, &study.output, progress)?);
     }
     let path = study.output.join("provenance.json");
@@ -86,7 +111,7 @@ pub fn run(study: &Study, stage: Stage, progress: &dyn Progress) -> Result<Outco
     };
     write_provenance(&provenance, &path)?;
     written.push(path);
-    Ok(Outcome { fitted, counts: matched.counts, remarks: matched.remarks, refits, written })
+    Ok(Outcome { fitted, counts: matched.counts, remarks: matched.remarks, spreading, refits, written })
 }
 
 /// Makes a folder for outputs, with all above it.

@@ -66,6 +66,8 @@ pub(crate) enum Command {
     Match(StudyArgs),
     /// Fit level against wind speed, per site and band
     Fit(Box<FitArgs>),
+    /// Compare a wave model's directional spreading with the sound that opposing waves radiate
+    Spread(RunArgs),
     /// Draw the figures and write the HTML page
     Report(StudyArgs),
     /// Do the whole job: match, fit, report

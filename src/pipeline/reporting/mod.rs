@@ -5,6 +5,8 @@ mod methods;
 mod page;
 pub(super) mod words;
 
+pub(super) use page::block;
+
 use super::fitting::{segments_of, wind_speed_m_s};
 use super::matching::{Matched, used_levels_db};
 use super::progress::Progress;
@@ -12,7 +14,8 @@ use super::provenance::InputRecord;
 use crate::Error;
 use crate::config::Study;
 use crate::io::replace_file::replace_with;
-use crate::model::{Conditions, Fitted, FittedBand, FittedSensor, SensorRecord, Site};
+use crate::model::{Conditions, Fitted, FittedBand, FittedSensor, SensorRecord, SensorSpreading, Site};
+use crate::pipeline::spreading::{SpreadFigures, spread_figures};
 use crate::report::{Figure, html};
 use rayon::prelude::*;
 use std::path::{Path, PathBuf};
@@ -31,6 +34,8 @@ pub(super) struct ReportInput<'a> {
     pub matched: &'a Matched,
     /// The relations.
     pub fitted: &'a Fitted,
+    /// The spreading comparison; empty without spectra.
+    pub spreading: &'a [SensorSpreading],
     /// The input files.
     pub inputs: &'a [InputRecord],
 }
@@ -51,9 +56,9 @@ struct Pairing<'a> {
 /// A figure with its place and its caption.
 pub(super) struct Placed {
     /// File name without extension.
-    name: String,
-    caption: String,
-    figure: Figure,
+    pub(super) name: String,
+    pub(super) caption: String,
+    pub(super) figure: Figure,
 }
 
 /// Draws all figures and writes them (SVG and PNG) and the page. Returns the files written.
@@ -71,7 +76,9 @@ pub(super) fn write_report(
         pairings.par_iter().map(|pairing| figures::of_pairing(input, pairing)).collect();
     let figure_folder = folder.join("figures");
     std::fs::create_dir_all(&figure_folder).map_err(|source| Error::Folder { path: figure_folder.clone(), source })?;
-    let all: Vec<&Placed> = whole.iter().chain(per_pairing.iter().flatten()).collect();
+    let spread = spread_figures(input.study, input.matched, input.spreading);
+    let of_spread = spread.testability.iter().chain(spread.of_sensors.iter().flatten());
+    let all: Vec<&Placed> = whole.iter().chain(per_pairing.iter().flatten()).chain(of_spread).collect();
     progress.start(all.len() as u64, "drawing");
     let written: Vec<[PathBuf; 2]> = all
         .par_iter()
@@ -84,13 +91,34 @@ pub(super) fn write_report(
     progress.finish();
     let page = folder.join("report.html");
     let methods = methods::methods(input);
-    let document = page::document(input, &pairings, &methods, whole, per_pairing);
+    let document = page::document(input, &pairings, &methods, whole, per_pairing, spread);
     replace_with(&page, html(&document).as_bytes())?;
     let text = folder.join("methods.md");
     replace_with(&text, methods.markdown(input.study).as_bytes())?;
     let mut files: Vec<PathBuf> = written.into_iter().flatten().collect();
     files.extend([page, text]);
     Ok(files)
+}
+
+/// Draws and writes the figures of the spreading comparison alone. Returns the files written.
+///
+/// # Errors
+/// When a file cannot be written.
+pub(super) fn write_spread_figures(
+    study: &Study,
+    matched: &Matched,
+    spreading: &[SensorSpreading],
+    folder: &Path,
+) -> Result<Vec<PathBuf>, Error> {
+    let figures = spread_figures(study, matched, spreading);
+    let folder = folder.join("figures");
+    std::fs::create_dir_all(&folder).map_err(|source| Error::Folder { path: folder.clone(), source })?;
+    let all: Vec<&Placed> = figures.testability.iter().chain(figures.of_sensors.iter().flatten()).collect();
+    let written: Vec<[PathBuf; 2]> = all
+        .par_iter()
+        .map(|placed| write_figure(&folder, &placed.name, &placed.figure))
+        .collect::<Result<_, Error>>()?;
+    Ok(written.into_iter().flatten().collect())
 }
 
 /// Writes a figure as SVG and PNG.

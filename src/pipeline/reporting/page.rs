@@ -3,9 +3,10 @@
 use super::figures::{percentiles, wind_classes};
 use super::methods::Methods;
 use super::words::{estimate, reference};
-use super::{Pairing, Placed, ReportInput};
+use super::{Pairing, Placed, ReportInput, SpreadFigures};
 use crate::model::{FittedBand, Missing, RelationWarning, Verdict, WindErrorEstimate};
 use crate::pipeline::provenance::PROGRAM;
+use crate::pipeline::spreading::spreading_section;
 use crate::report::{Block, Column, Document, Section, Table, findings, number, p_text};
 
 /// Said on every page: what the numbers are not.
@@ -18,10 +19,14 @@ pub(super) fn document(
     methods: &Methods,
     whole: Vec<Placed>,
     per_pairing: Vec<Vec<Placed>>,
+    spread: SpreadFigures,
 ) -> Document {
     let mut sections = vec![inputs_section(input, whole)];
     for (pairing, figures) in pairings.iter().zip(per_pairing) {
         sections.push(pairing_section(input, pairing, figures));
+    }
+    if !input.spreading.is_empty() {
+        sections.push(spreading_section(input.spreading, spread));
     }
     sections.push(methods_section(methods));
     sections.push(provenance_section(input));
@@ -107,7 +112,7 @@ fn inputs_section(input: &ReportInput<'_>, whole: Vec<Placed>) -> Section {
     Section::new("Sites, coverage and what was used", blocks)
 }
 
-fn block(placed: Placed) -> Block {
+pub(in crate::pipeline) fn block(placed: Placed) -> Block {
     Block::Figure { figure: placed.figure, caption: placed.caption, file: Some(format!("figures/{}.svg", placed.name)) }
 }
 
