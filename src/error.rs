@@ -61,6 +61,9 @@ pub enum Error {
     /// A level table.
     #[error(transparent)]
     Levels(#[from] crate::io::levels::LevelError),
+    /// Texts of a buoy archive.
+    #[error(transparent)]
+    Buoy(#[from] crate::io::buoy_spectra::BuoyError),
     /// A site list or track.
     #[error(transparent)]
     Sites(#[from] crate::io::sites::SiteError),
@@ -117,6 +120,7 @@ impl Error {
             | Self::Levels(_)
             | Self::Sites(_)
             | Self::Intervals(_)
+            | Self::Buoy(_)
             | Self::WindTable(_)
             | Self::LevelWindows(_)
             | Self::Checksum(_)

@@ -1,5 +1,6 @@
 //! From bytes to the model and back: the only code that knows netcdf, hdf5 and polars.
 
+pub mod buoy_spectra;
 pub mod checksum;
 mod contain;
 pub mod delimited;

@@ -1,14 +1,16 @@
 //! `sample spectrum`: the sea at a place and an instant, through exactly the code that `match` uses.
 
 use super::look_up::{Answer, LookUp, instant, needed, unknown};
+use super::look_up_moments::look_up_moments;
 use super::progress::Silent;
 use super::spectra_sampling::{SpectraRules, sample_spectra};
 use crate::Error;
 use crate::config::spectra_options_from;
+use crate::io::buoy_spectra::is_buoy_text;
 use crate::io::netcdf::{SpectraPlace, SpectraSource, open_spectra};
 use crate::model::{Missing, NodeId, Point, Sampled, Site, SourceId, SpatialRule, SpectraSeries, SpectrumAxes, Track};
 use crate::science::sample::stencil;
-use crate::science::waves::{Radiator, ReduceOptions, Reducer, WindowSea, sea_over_window};
+use crate::science::waves::{Radiator, ReduceOptions, Reducer, WindowSea, from_direction_deg, sea_over_window};
 use crate::units::{Instant, Window};
 use std::f64::consts::TAU;
 
@@ -19,6 +21,7 @@ const PERIOD_1: &str = "sea_surface_wave_mean_period_from_variance_spectral_dens
 const PERIOD_2: &str = "sea_surface_wave_mean_period_from_variance_spectral_density_second_frequency_moment";
 const PERIOD_INVERSE: &str = "sea_surface_wave_mean_period_from_variance_spectral_density_inverse_frequency_moment";
 const FROM: &str = "sea_surface_wave_from_direction";
+const BAND_FROM: &str = "sea_surface_wave_mean_from_direction";
 const TO: &str = "sea_surface_wave_to_direction";
 const SPREAD: &str = "sea_surface_wave_directional_spread";
 const DENSITY: &str = "sea_surface_wave_variance_spectral_density";
@@ -29,7 +32,7 @@ const RADIATED: &str = "radiated_level";
 const TAIL: &str = "tail_start";
 
 /// The quantities with their units.
-const QUANTITIES: [(&str, &str); 15] = [
+const QUANTITIES: [(&str, &str); 16] = [
     (HEIGHT, "m"),
     (PEAK_PERIOD, "s"),
     (PEAK_FREQUENCY, "s-1"),
@@ -38,6 +41,7 @@ const QUANTITIES: [(&str, &str); 15] = [
     (PERIOD_INVERSE, "s"),
     (FROM, "degree"),
     (TO, "degree"),
+    (BAND_FROM, "degree"),
     (SPREAD, "degree"),
     (DENSITY, "m2 s"),
     (DIRECTIONAL, "m2 s rad-1"),
@@ -61,6 +65,9 @@ pub fn look_up_spectrum(question: &LookUp) -> Result<Answer, Error> {
             names.join(", ")
         )));
     };
+    if question.files.iter().any(|path| is_buoy_text(path)) {
+        return look_up_moments(question, quantity, unit);
+    }
     let time = instant(&needed(question.time.clone(), "--time")?)?;
     let source = open_spectra(SourceId("spectra".into()), &question.files, &options)?;
     let place = match (question.latitude_deg, question.longitude_deg) {
@@ -132,6 +139,9 @@ fn answer(
         FROM => Ok(state.mean_from_deg),
         TO => Ok((state.mean_from_deg + 180.0).rem_euclid(360.0)),
         SPREAD => Ok(state.spread_deg),
+        BAND_FROM => nearest(&series.axes, frequency()?)
+            .map(|k| from_direction_deg(sea.moments.a1[k], sea.moments.b1[k]))
+            .ok_or(Missing::NoFrequency),
         TAIL => state.tail_start_hz.ok_or(Missing::NoTail),
         DENSITY => at_frequency(&series.axes, &state.by_frequency.density_m2_hz, frequency()?),
         DIRECTIONAL => {

@@ -6,6 +6,7 @@ mod exclusion;
 mod fitting;
 mod inputs;
 mod look_up;
+mod look_up_moments;
 mod look_up_sea;
 mod matching;
 mod progress;

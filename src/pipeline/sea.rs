@@ -132,7 +132,9 @@ impl Sea {
         let wind = conditions.iter().find(|conditions| Some(&conditions.source) == of_record.wind.as_ref());
         let bands: Vec<Band> = record.bands.iter().map(|band| band.band).collect();
         let settings = study.spreading.band_settings(record.depth_m);
-        let mut radiating = RadiatedBands::new(&series.axes, &study.spreading.radiator, &bands, settings);
+        // Beyond the waves that gravity rules the formula says nothing.
+        let reach = bands.iter().take_while(|band| band.centre_hz <= study.spreading.highest_hz).count();
+        let mut radiating = RadiatedBands::new(&series.axes, &study.spreading.radiator, &bands[..reach], settings);
         let mut rows = Vec::with_capacity(windows.len() * bands.len());
         let mut room = Vec::new();
         for sea in seas(study, series, record, wind, windows) {

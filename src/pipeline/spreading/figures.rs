@@ -14,6 +14,8 @@ use std::f64::consts::TAU;
 
 /// Windows that a cloud of overlaps shows at most: every n-th one is taken.
 const MOST_WINDOWS: usize = 20_000;
+/// Sensors on one map of testability.
+const SITES_A_SHEET: usize = 4;
 
 /// The figures, in the order of the page.
 pub(in crate::pipeline) struct SpreadFigures {
@@ -26,7 +28,13 @@ pub(in crate::pipeline) struct SpreadFigures {
 /// Draws the figures of all sensors.
 pub(in crate::pipeline) fn spread_figures(study: &Study, matched: &Matched, all: &[SensorSpreading]) -> SpreadFigures {
     let models: Vec<&str> = study.spectra.iter().map(|input| input.id.0.as_str()).collect();
-    let testability = models.iter().map(|model| testability(model, all)).collect();
+    // A sheet a few sites, so that a figure stays a page.
+    let testability = models
+        .iter()
+        .flat_map(|model| {
+            all.chunks(SITES_A_SHEET).enumerate().map(move |(sheet, some)| testability(model, sheet, some))
+        })
+        .collect();
     let of_sensors = all
         .iter()
         .map(|sensor| {
@@ -47,7 +55,7 @@ pub(in crate::pipeline) fn spread_figures(study: &Study, matched: &Matched, all:
     SpreadFigures { testability, of_sensors }
 }
 
-fn testability(model: &str, all: &[SensorSpreading]) -> Placed {
+fn testability(model: &str, sheet: usize, all: &[SensorSpreading]) -> Placed {
     let sites = all
         .iter()
         .map(|sensor| {
@@ -80,7 +88,7 @@ fn testability(model: &str, all: &[SensorSpreading]) -> Placed {
         sites,
     });
     Placed {
-        name: format!("testability_{}", file_part(model)),
+        name: format!("testability_{}_{}", file_part(model), sheet + 1),
         caption: format!(
             "Share of the hours in which sound could judge the spreading of {model}, by month and band of sound."
         ),

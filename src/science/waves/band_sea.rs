@@ -41,7 +41,8 @@ pub fn band_seas(
 ) {
     let source = sea.source();
     room.clear();
-    room.resize(bands.len(), Err(NotRadiated::NoSpectrum));
+    // Bands beyond those that radiate (they rise in frequency) have no level.
+    room.resize(bands.len(), Err(NotRadiated::BeyondFrequencies));
     radiating.levels(&source, sea.state.tail_start_hz, room);
     let fp = sea.state.wind_sea.map_or(f64::NAN, |wind_sea| wind_sea.peak_hz);
     for (band, radiated) in bands.iter().zip(room.iter()) {

@@ -3,6 +3,7 @@
 mod band_sea;
 mod blend;
 mod from_moments;
+mod moment_sea;
 mod moments;
 mod opposing;
 mod opposing_seas;
@@ -19,6 +20,7 @@ mod window_sea;
 pub use band_sea::*;
 pub use blend::*;
 pub use from_moments::*;
+pub use moment_sea::*;
 pub use moments::*;
 pub use opposing::Opposing;
 pub use opposing_seas::*;

@@ -14,6 +14,8 @@ const LEAST_DENSITY_SHARE: f64 = 1e-8;
 pub struct WindowSea {
     /// Height, periods, directions, of the mean spectrum.
     pub state: SeaState,
+    /// Moments of the mean spectrum.
+    pub moments: Moments,
     /// Mean of E^2 times the overlap at every frequency, in its parts, m4/Hz2/rad.
     pub overlap: Vec<OverlapParts>,
     /// Largest share of pairs of opposite bins with a zero among the steps used.
@@ -110,7 +112,7 @@ fn sea_over(
         })
         .collect();
     let steps = weights.iter().map(|weight| weight.step).collect();
-    Sampled::with_flags(WindowSea { state, overlap, zero_pair_share, steps }, flags)
+    Sampled::with_flags(WindowSea { state, moments, overlap, zero_pair_share, steps }, flags)
 }
 
 fn mean_moments(series: &SpectraSeries, weights: &[StepWeight]) -> Moments {

@@ -3,4 +3,5 @@
 mod hazards;
 mod reference;
 mod sampling;
+mod study;
 mod support;

@@ -90,3 +90,29 @@ fn the_wave_models_own_test_spectrum_gives_its_facts() {
         assert!((answer.unwrap().value.unwrap() - density).abs() < 1e-6, "{to}");
     }
 }
+
+// DATA.md: facts of a real buoy, worked out with numpy; height within 0.02 m of both ways of weighing uneven frequencies.
+#[test]
+fn a_buoys_texts_give_its_facts() {
+    let Some(folder) = shared("data") else { return };
+    let files: Vec<std::path::PathBuf> = ["data_spec", "swdir", "swdir2", "swr1", "swr2"]
+        .iter()
+        .map(|kind| folder.join(format!("ndbc_44013.{kind}")))
+        .collect();
+    for (time, hs, peak_hz, density, from) in [
+        ("2022-04-28T02:50:00Z", 1.519, 0.088, 2.5, 104.0),
+        ("2022-04-28T03:50:00Z", 1.676, 0.200, 2.14, 316.0),
+        ("2022-05-08T12:50:00Z", 1.653, 0.170, 1.39, 76.0),
+    ] {
+        let get = |quantity: &str| ask(&files, None, time, quantity, peak_hz).unwrap();
+        let value = |quantity: &str| get(quantity).value.unwrap();
+        assert!((value(HEIGHT) - hs).abs() < 0.02, "{time}");
+        let peak = value("sea_surface_wave_frequency_at_variance_spectral_density_maximum");
+        assert!((peak - peak_hz).abs() < 1e-9, "{time}: {peak}");
+        assert!((value("sea_surface_wave_variance_spectral_density") - density).abs() < 0.006, "{time}");
+        assert!((value("sea_surface_wave_mean_from_direction") - from).abs() < 1e-6, "{time}");
+        let overlap = get("overlap_2pi");
+        assert_eq!((overlap.status, overlap.value), ("missing", None));
+        assert!(overlap.message.unwrap().contains("1/rad over shapes with these moments"), "{time}");
+    }
+}
