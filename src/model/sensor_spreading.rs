@@ -1,7 +1,7 @@
 //! The spreading comparison of one sensor, with what it belongs to.
 
 use super::matchup::SensorRecord;
-use super::spreading::{BandComparison, PairedComparison, Testability};
+use super::spreading::{BandComparison, PairedComparison, Testability, density_words};
 use serde::Serialize;
 
 /// All comparisons of one sensor.
@@ -36,6 +36,6 @@ impl SensorSpreading {
 
     /// What bounds the density, as the verdicts say it.
     pub fn density_words(&self) -> String {
-        format!("E taken as known to {} dB", self.density_sd_db)
+        density_words(self.density_sd_db, false)
     }
 }

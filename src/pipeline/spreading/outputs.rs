@@ -5,7 +5,7 @@ use crate::config::{Study, TableFormat};
 use crate::io::replace_file::replace_with;
 use crate::io::table::{TableWriter, write_dictionary};
 use crate::model::{SensorSpreading, Table};
-use crate::report::columns::{SpreadRow, TestabilityRow, spreading_table, testability_table};
+use crate::report::columns::{spreading_table, testability_table};
 use std::path::{Path, PathBuf};
 
 /// Writes the comparison and the testability, as tables with their dictionaries and as JSON. Returns the files written.
@@ -18,17 +18,8 @@ pub(in crate::pipeline) fn write_spreading(
     folder: &Path,
 ) -> Result<Vec<PathBuf>, Error> {
     let mut written = Vec::new();
-    let density = all.first().map(SensorSpreading::density_words).unwrap_or_default();
-    let mut rows = Vec::new();
-    let mut months = Vec::new();
-    for sensor in all {
-        let (site, name) = (sensor.site.as_str(), sensor.sensor.as_str());
-        rows.extend(sensor.comparisons.iter().map(|comparison| SpreadRow { site, sensor: name, comparison }));
-        let of_month = |(model, month)| TestabilityRow { model, site, sensor: name, month };
-        months.extend(sensor.testability.iter().map(|(model, month)| (model.as_str(), month)).map(of_month));
-    }
-    write(study, &spreading_table(&rows, &density), folder, "spreading", &mut written)?;
-    write(study, &testability_table(&months), folder, "testability", &mut written)?;
+    write(study, &spreading_table(all), folder, "spreading", &mut written)?;
+    write(study, &testability_table(all), folder, "testability", &mut written)?;
     let json = folder.join("spreading.json");
     let mut text = serde_json::to_string_pretty(all).expect("plain data is JSON");
     text.push('\n');

@@ -10,6 +10,7 @@ mod sampled;
 mod sea;
 mod segments;
 mod sensitivity;
+mod spreading;
 
 pub use checks::{bands_together_table, wind_error_table};
 pub use conditions::conditions_table;
@@ -20,3 +21,4 @@ pub use replicates::replicates_table;
 pub use sampled::sampled_table;
 pub use segments::segments_table;
 pub use sensitivity::sensitivity_table;
+pub use spreading::{spreading_table, testability_table};
