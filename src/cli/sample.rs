@@ -5,7 +5,7 @@ use super::args::{SampleArgs, SampleKind, Spatial};
 use super::one_line;
 use super::terminal::print;
 use crate::model::{CoastRule, SpatialRule};
-use crate::pipeline::{Answer, LookUp, look_up_levels, look_up_sites, look_up_spectrum, look_up_wind};
+use crate::pipeline::{Answer, LookUp, look_up_levels, look_up_sites, look_up_spectrum, look_up_waves, look_up_wind};
 use std::process::ExitCode;
 
 pub(super) fn sample(args: &SampleArgs) -> Result<(), Ending> {
@@ -34,6 +34,7 @@ pub(super) fn sample(args: &SampleArgs) -> Result<(), Ending> {
     };
     let looked = match args.kind {
         SampleKind::Wind => look_up_wind(&question),
+        SampleKind::Waves => look_up_waves(&question),
         SampleKind::Spectrum => look_up_spectrum(&question),
         SampleKind::Levels => look_up_levels(&question),
         SampleKind::Sites => look_up_sites(&question),

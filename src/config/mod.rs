@@ -25,4 +25,4 @@ pub use sites::SitesInput;
 pub use spectra::{SpectraInput, spectra_options_from};
 pub use spreading::SpreadingSection;
 pub use study::{ReportSection, Study, TableFormat, read_study};
-pub use wind::{WindInput, WindOrigin, wind_options_from};
+pub use wind::{WindInput, WindOrigin, wave_options_from, wind_options_from};

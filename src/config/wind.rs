@@ -187,6 +187,17 @@ impl RawWind {
     }
 }
 
+/// The options of `sample waves`: `variable`, and of the keys of `[[wind]]` those about axes, time and sense.
+///
+/// # Errors
+/// When a key is unknown or a value does not fit; the message names it.
+pub fn wave_options_from(settings: &[String]) -> Result<(WindOptions, Option<String>), StudyError> {
+    let is_variable = |text: &&String| text.split('=').next().is_some_and(|key| key.trim() == "variable");
+    let variable = settings.iter().find(is_variable).and_then(|text| text.split_once('='));
+    let rest: Vec<String> = settings.iter().filter(|text| !is_variable(text)).cloned().collect();
+    Ok((wind_options_from(&rest)?, variable.map(|(_, name)| name.trim().to_owned())))
+}
+
 /// The options that `key=value` texts of the command line give: exactly the keys of `[[wind]]`.
 ///
 /// # Errors

@@ -8,6 +8,8 @@ use std::path::PathBuf;
 pub(crate) enum SampleKind {
     /// Gridded 10 m wind
     Wind,
+    /// Gridded wave height, periods, direction, spread
+    Waves,
     /// Directional wave spectra, gridded or at stations
     Spectrum,
     /// A table of band levels

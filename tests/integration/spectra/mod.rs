@@ -5,3 +5,4 @@ mod reference;
 mod sampling;
 mod study;
 mod support;
+mod waves;
