@@ -5,7 +5,7 @@ use crate::model::{
     BandSea, Conditions, FittedBand, LevelKind, Radiated, Resolved, SensorRecord, SensorSpreading, SourceId,
 };
 use crate::pipeline::fitting::wind_speed_m_s;
-use crate::pipeline::matching::{Matched, reason_of_pair};
+use crate::pipeline::matching::Matched;
 use crate::pipeline::progress::Progress;
 use crate::science::spreading::{BandFloor, BandWindows, LawTable, ModelWindows, compare, testability};
 use crate::units::Instant;
@@ -117,7 +117,7 @@ fn of_band(rows: &[BandSea], record: &SensorRecord, band: usize) -> OfBand {
 fn band_levels_db(record: &SensorRecord, band: usize, wind: Option<&Conditions>) -> Vec<f64> {
     let levels = &record.bands[band];
     let shift = record.kind.to_other_db(LevelKind::BandLevel, levels.band);
-    let used = |k: usize| wind.is_none_or(|wind| reason_of_pair(record, levels, wind, k).is_none());
+    let used = |k: usize| wind.is_none_or(|wind| wind.pair_reason(record, band, k).is_none());
     (0..record.windows.len()).map(|k| if used(k) { levels.level_db[k] + shift } else { f64::NAN }).collect()
 }
 
