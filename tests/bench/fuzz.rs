@@ -23,9 +23,38 @@ const SLOW: Duration = Duration::from_secs(2);
 
 /// Words that readers know.
 const WORDS: [&str; 32] = [
-    "since", "hours", "1900-01-01", "T24:00", "+02:00", "-", "e308", "NaN", "inf", "1e-320", "9223372036854775807", "\"", ",",
-    ";", "\n", "\r", "\t", "\u{feff}", "\u{b5}", "\0", "[[wind]]", "[[site]]", "= [", "latitude", "level_db", "63 Hz", "W",
-    "90.0001", "0x7f", "31/12/2031", "60", "#",
+    "since",
+    "hours",
+    "1900-01-01",
+    "T24:00",
+    "+02:00",
+    "-",
+    "e308",
+    "NaN",
+    "inf",
+    "1e-320",
+    "9223372036854775807",
+    "\"",
+    ",",
+    ";",
+    "\n",
+    "\r",
+    "\t",
+    "\u{feff}",
+    "\u{b5}",
+    "\0",
+    "[[wind]]",
+    "[[site]]",
+    "= [",
+    "latitude",
+    "level_db",
+    "63 Hz",
+    "W",
+    "90.0001",
+    "0x7f",
+    "31/12/2031",
+    "60",
+    "#",
 ];
 
 /// Random numbers (splitmix64: Steele, Lea, Flood 2014).
@@ -136,8 +165,11 @@ fn files(folder: &str, endings: &[&str]) -> Result<Vec<Vec<u8>>, Failed> {
 fn targets() -> Result<Vec<Target>, Failed> {
     let classic = |seeds: Vec<Vec<u8>>| seeds.into_iter().filter(|seed| seed.starts_with(b"CDF")).collect();
     let units = [
-        "hours since 1900-01-01 00:00:00.0\nstandard", "days since 1-1-1\njulian", "Seconds Since 1970-01-01T00:00:00Z\n360_day",
-        "minutes since 2031-02-28 23:59:59.999 -03:30\nnoleap", "hours since 0000-01-01\nproleptic_gregorian",
+        "hours since 1900-01-01 00:00:00.0\nstandard",
+        "days since 1-1-1\njulian",
+        "Seconds Since 1970-01-01T00:00:00Z\n360_day",
+        "minutes since 2031-02-28 23:59:59.999 -03:30\nnoleap",
+        "hours since 0000-01-01\nproleptic_gregorian",
     ];
     Ok(vec![
         Target {
@@ -183,7 +215,8 @@ fn targets() -> Result<Vec<Target>, Failed> {
                 files("demo-data", &["sites.csv"])?,
                 vec![
                     b"id;lat;lon;depth\nA;44\xc2\xb030.5'N;31 15 W;120\nB;-12,5;179,9;-30\n".to_vec(),
-                    b"site,time,latitude,longitude\nA,2031-01-10T00:00Z,44.5,179.9\nA,2031-01-10T06:00Z,44.6,-179.9\n".to_vec(),
+                    b"site,time,latitude,longitude\nA,2031-01-10T00:00Z,44.5,179.9\nA,2031-01-10T06:00Z,44.6,-179.9\n"
+                        .to_vec(),
                 ],
             ]
             .concat(),
