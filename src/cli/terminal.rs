@@ -6,7 +6,7 @@ use std::io::{self, IsTerminal, Write};
 use std::process::ExitCode;
 use std::sync::Mutex;
 
-/// Where talk goes, and how much of it.
+/// Where remarks go, and how many of them.
 #[derive(Debug)]
 pub(crate) struct Terminal {
     quiet: bool,

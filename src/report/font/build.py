@@ -1,5 +1,7 @@
 """Makes the two font files of this folder: see README.md for the sources and versions."""
 
+import os
+import tempfile
 import sys
 
 from fontTools import merge, subset
@@ -48,7 +50,7 @@ def rename(font, style):
 for style in ("Regular", "Bold"):
     parts = []
     for number, (name, codes) in enumerate(((f"NotoSans-{style}.ttf", TEXT), ("NotoSansMath-Regular.ttf", SIGNS))):
-        part = f"/tmp/part{number}.ttf"
+        part = os.path.join(tempfile.gettempdir(), f"part{number}.ttf")
         cut(FOLDER + name, codes).save(part)
         parts.append(part)
     font = merge.Merger().merge(parts)

@@ -2,6 +2,7 @@
 
 mod apply;
 mod expression;
+mod words;
 
 pub use apply::{Interval, RULE_COLUMNS, Rule, RuleKind, exclude};
 pub use expression::{Expression, ExpressionError};
