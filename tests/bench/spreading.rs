@@ -13,9 +13,10 @@ mod figures;
 use deployments::{Model, Obstacle, tally};
 use std::time::Instant;
 use underwind::model::{Band, DirectionalSpectrum, NotRadiated, SpectrumAxes};
+use underwind::science::simulate::{SeaSettings, model_spectrum, sea_steps};
 use underwind::science::waves::{
-    BandSettings, MomentTables, Moments, Opposing, RadiatedBands, Radiator, StepOverlap, Water, WindOver, blend_nodes,
-    pair_overlap, step_overlap,
+    BandSettings, MomentTables, Moments, Opposing, OpposingOptions, RadiatedBands, Radiator, SeaSurvey, StepOverlap,
+    Surveyor, Water, WindOver, blend_nodes, pair_overlap, step_overlap,
 };
 
 /// A year of 3-hourly spectra at 20 sites, four nodes each: moments, overlap of every step and pair, levels of ten bands.
@@ -65,6 +66,38 @@ fn speed() {
     );
 }
 
+/// A look at stored spectra: single seas, and a swell under them.
+fn survey_speed() {
+    let frequency_hz = (0..36).map(|k| 0.04 * 1.1_f64.powi(k)).collect();
+    let directions = (0..36).map(|i| f64::from(i) * std::f64::consts::TAU / 36.0).collect();
+    let axes = SpectrumAxes::new(frequency_hz, None, directions).unwrap();
+    for swell_hs_m in [0.0, 1.0] {
+        let settings = SeaSettings { swell_hs_m, ..SeaSettings::default() };
+        let hours = 400;
+        let (east, north): (Vec<f64>, Vec<f64>) =
+            (0..hours).map(|h| (f64::from(h) / 9.0).sin_cos()).map(|(s, c)| (8.0 * s, 8.0 * c)).unzip();
+        let steps = sea_steps(&east, &north, 1.0, &settings, &Radiator::default());
+        let spectra: Vec<Vec<f64>> = steps
+            .iter()
+            .map(|step| {
+                let mut density = vec![0.0; axes.cells()];
+                model_spectrum(step, &settings, &axes, &mut density);
+                density
+            })
+            .collect();
+        let surveyor = Surveyor::new(&axes, &Water::default(), OpposingOptions::default());
+        let (mut survey, mut moments) = (SeaSurvey::new(&axes), Moments::zeros(36));
+        let clock = Instant::now();
+        for (step, density) in spectra.iter().enumerate() {
+            let wind = WindOver { speed_m_s: 8.0, from_deg: steps[step].to_rad.to_degrees() + 180.0 };
+            let spectrum = DirectionalSpectrum::new(&axes, density).unwrap();
+            surveyor.look(step, spectrum, Some(wind), &mut moments, &mut survey);
+        }
+        let each_us = 1e6 * clock.elapsed().as_secs_f64() / f64::from(hours);
+        println!("swell of {swell_hs_m} m: {each_us:.1} us a spectrum, {} events", survey.events.len());
+    }
+}
+
 fn main() {
     let arguments: Vec<String> = std::env::args().skip(1).filter(|argument| argument != "--bench").collect();
     if let [word, folder] = &arguments[..]
@@ -75,6 +108,7 @@ fn main() {
     }
     if arguments.first().is_some_and(|word| word == "speed") {
         speed();
+        survey_speed();
         return;
     }
     let runs: u64 = arguments.iter().find_map(|argument| argument.parse().ok()).unwrap_or(200);

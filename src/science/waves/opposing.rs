@@ -68,6 +68,21 @@ impl Opposing {
         first.iter().zip(rows).map(|(value, row)| (*value).into() * product_sum(row, second)).sum()
     }
 
+    /// The part of a row's overlap that pairs bins of one label with bins of another.
+    pub fn joint(&self, row: &[f64], labels: &[usize], first: usize, second: usize) -> f64 {
+        if let Some((half, step)) = self.bins {
+            let pairs = (0..half).filter(|i| {
+                let (a, b) = (labels[*i], labels[i + half]);
+                (a == first && b == second) || (a == second && b == first)
+            });
+            return 2.0 * step * pairs.map(|i| row[i] * row[i + half]).sum::<f64>();
+        }
+        let only = |label: usize| -> Vec<f64> {
+            row.iter().zip(labels).map(|(density, of)| if *of == label { *density } else { 0.0 }).collect()
+        };
+        2.0 * self.by_fourier(&only(first), &only(second))
+    }
+
     /// Share of the pairs of opposite bins in which at least one density is zero; NaN where the axis has no such pairs.
     pub fn zero_pair_share(&self, row: &[f64]) -> f64 {
         let Some((half, _)) = self.bins else { return f64::NAN };

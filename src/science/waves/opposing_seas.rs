@@ -39,6 +39,9 @@ pub fn opposing_seas(
         return None;
     }
     let axes = spectrum.axes;
+    if !may_hold_two(spectrum, options) {
+        return None;
+    }
     let system_of = systems(spectrum, options.dip);
     let count = system_of.iter().max()? + 1;
     let all: Vec<WaveSystem> = (0..count).map(|system| describe(spectrum, &system_of, system, is_wind_sea)).collect();
@@ -72,6 +75,36 @@ pub fn opposing_seas(
     best
 }
 
+/// Whether there are two summits that could belong to two systems; nearly all spectra are done with here. A system's density is
+/// nowhere above its summit, so a summit below the least height over the whole axis cannot matter.
+fn may_hold_two(spectrum: DirectionalSpectrum<'_>, options: &OpposingOptions) -> bool {
+    const LEAST_APART_COSINE: f64 = 0.866;
+    let axes = spectrum.axes;
+    let room: f64 = axes.frequency_weight_hz.iter().sum::<f64>() * std::f64::consts::TAU;
+    let least_m0 = (0.25 * options.least_hs_m) * (0.25 * options.least_hs_m);
+    let density = spectrum.density_m2_hz_rad;
+    let mut first: Option<f64> = None;
+    for (k, row) in density.chunks_exact(axes.directions()).enumerate() {
+        let count = row.len();
+        for (i, value) in row.iter().enumerate() {
+            let beside = row[(i + 1) % count].max(row[(i + count - 1) % count]);
+            if *value * room < least_m0 || *value < beside {
+                continue;
+            }
+            let cell = k * count + i;
+            if neighbours(axes, cell).all(|other| density[other] <= *value) {
+                let to = axes.direction_to_rad[i];
+                match first {
+                    None => first = Some(to),
+                    Some(other) if libm::cos(to - other) < LEAST_APART_COSINE => return true,
+                    Some(_) => {}
+                }
+            }
+        }
+    }
+    false
+}
+
 /// Frequency with the strongest joint overlap of two systems, where that is most of the overlap and both have energy.
 fn strongest(
     spectrum: DirectionalSpectrum<'_>,
@@ -86,10 +119,10 @@ fn strongest(
     for k in 0..spectrum.axes.frequencies() {
         let row = spectrum.row(k);
         let labels = &system_of[k * directions..(k + 1) * directions];
-        let only = |system: usize| -> Vec<f64> {
-            row.iter().zip(labels).map(|(density, label)| if *label == system { *density } else { 0.0 }).collect()
-        };
-        let joint = 2.0 * table.overlap(&only(first), &only(second));
+        if !(labels.contains(&first) && labels.contains(&second)) {
+            continue;
+        }
+        let joint = table.joint(row, labels, first, second);
         let total = table.own(row);
         let share = joint / total;
         if share >= options.least_share && best.is_none_or(|(_, strength, _)| joint > strength) {
