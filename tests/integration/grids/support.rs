@@ -9,9 +9,22 @@ use underwind::model::{Point, Site, SourceId, SpatialRule, Track, WindSeries};
 use underwind::pipeline::{Answer, LookUp, Silent, look_up_wind, sample_wind};
 use underwind::units::Instant;
 
+/// The name that `f01_odd_name.nc` gets in the tests.
+pub(super) const ODD_NAME: &str = "f01 odd näme #1 100% [a].nc";
+
 /// A file of this folder's fixtures.
 pub(super) fn fixture(name: &str) -> PathBuf {
-    project().join("tests/fixtures/grids").join(name)
+    static FOLDER: std::sync::OnceLock<tempfile::TempDir> = std::sync::OnceLock::new();
+    let stored = |name: &str| project().join("tests/fixtures/grids").join(name);
+    if name != "f01_odd_name.nc" {
+        return stored(name);
+    }
+    let folder = FOLDER.get_or_init(|| {
+        let folder = tempfile::tempdir().unwrap();
+        std::fs::copy(stored(name), folder.path().join(ODD_NAME)).unwrap();
+        folder
+    });
+    folder.path().join(ODD_NAME)
 }
 
 /// Expected values that the fixtures' script worked out.
