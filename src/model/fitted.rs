@@ -123,3 +123,12 @@ pub struct Fitted {
     /// By source, site and sensor.
     pub sensors: Vec<FittedSensor>,
 }
+
+impl Fitted {
+    /// What was found over the bands of the sensor that a band belongs to.
+    pub fn sensor_of(&self, band: &FittedBand) -> Option<&FittedSensor> {
+        self.sensors
+            .iter()
+            .find(|known| (&known.source, &known.site, &known.sensor) == (&band.source, &band.site, &band.sensor))
+    }
+}

@@ -1,7 +1,7 @@
 //! Conditions and matchups: the two tables that everything downstream stands on, as plain columns.
 
 use crate::model::{Band, Exclusion, FlagSet, LevelKind, LevelStatistic, Missing, SourceId};
-use crate::units::Window;
+use crate::units::{Compass, Window};
 
 /// The wind in one window.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -18,6 +18,13 @@ pub struct WindowWind {
     pub scalar_speed_mean_m_s: f64,
     /// Longest time between two steps that the mean bridged, s.
     pub step_bridged_s: f64,
+}
+
+impl WindowWind {
+    /// Direction that the mean wind comes from, degrees clockwise from true north; NaN for a calm or without direction.
+    pub fn from_direction_deg(&self) -> f64 {
+        Compass::of_wind(self.eastward_mean_m_s, self.northward_mean_m_s).map_or(f64::NAN, Compass::degrees)
+    }
 }
 
 /// What one wind source says at one site in each window of the site's record.
@@ -100,6 +107,22 @@ pub struct BandLevels {
     pub seconds: Vec<f32>,
     /// Why a level is missing or not used.
     pub reason: Vec<Option<Missing>>,
+}
+
+impl BandLevels {
+    /// Number of level samples behind the level of a window.
+    pub fn samples_at(&self, window: usize) -> u32 {
+        self.samples.get(window).copied().unwrap_or_else(|| u32::from(self.level_db[window].is_finite()))
+    }
+
+    /// Seconds of level samples behind the level of a window of this length, s.
+    pub fn seconds_at(&self, window: usize, length_s: f64) -> f64 {
+        match self.seconds.get(window) {
+            Some(seconds) => f64::from(*seconds),
+            None if self.level_db[window].is_finite() => length_s,
+            None => 0.0,
+        }
+    }
 }
 
 impl SensorRecord {

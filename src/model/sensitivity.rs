@@ -48,6 +48,16 @@ impl Moved {
 }
 
 impl Refit {
+    /// Whether both belong to one sensor.
+    pub fn of_same_sensor(&self, other: &Self) -> bool {
+        (&self.base.site, &self.base.sensor) == (&other.base.site, &other.base.sensor)
+    }
+
+    /// Whether both are of one choice.
+    pub fn of_same_choice(&self, other: &Self) -> bool {
+        self.choice == other.choice
+    }
+
     /// How far the choice moves a quantity, in the quantity's unit; `None` where either fit does not resolve it.
     pub fn shift(&self, quantity: Moved) -> Option<f64> {
         Some(quantity.of(&self.other).estimate()? - quantity.of(&self.base).estimate()?)

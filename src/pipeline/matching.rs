@@ -2,17 +2,15 @@
 
 use super::exclusion::Rules;
 use super::inputs::{Inputs, OpenLevels, OpenWind};
+use super::output::Output;
 use super::progress::Progress;
 use super::sampling::sample_wind;
 use super::sea::{Sea, bring_sea};
 use crate::Error;
-use crate::config::{Study, TableFormat, WindOrigin};
+use crate::config::{Study, WindOrigin};
 use crate::io::levels::LevelNames;
-use crate::io::table::{TableWriter, write_dictionary};
 use crate::io::wind_table::read_wind_table;
-use crate::model::{
-    BandLevels, Conditions, LevelKind, LevelRow, Missing, Screened, SensorRecord, Site, Table, WindSeries,
-};
+use crate::model::{BandLevels, Conditions, LevelKind, LevelRow, Missing, Screened, SensorRecord, Site, WindSeries};
 use crate::report::columns::{conditions_table, matchups_table, sampled_table};
 use crate::science::level_wind::{ScreenOptions, screen_short_events};
 use crate::science::matchup::{BandNumber, LevelWindows, SensorKey, wind_over_windows};
@@ -286,11 +284,7 @@ fn screen(record: &mut SensorRecord) -> Screened {
             reason.get_or_insert(Missing::ShortEvent);
         }
     }
-    Screened {
-        events: events.events,
-        windows: events.marked.iter().filter(|marked| **marked).count(),
-        kept_windows: events.kept_rows,
-    }
+    events.summary()
 }
 
 fn count_pairs(records: &[SensorRecord], conditions: &[Vec<Conditions>], counts: &mut Counts) {
@@ -374,7 +368,7 @@ pub fn write_tables(
     let mut written = Vec::new();
     let total: u64 = matched.conditions.iter().map(|sources| sources.len() as u64).sum();
     progress.start(total, "writing tables");
-    let mut sampled = Output::create(study, folder, "sampled")?;
+    let mut sampled = Output::create(&study.tables, folder, "sampled")?;
     for series in &matched.series {
         sampled.append(&sampled_table(series))?;
     }
@@ -382,8 +376,8 @@ pub fn write_tables(
 
     let rules: Vec<String> = matched.counts.excluded.iter().map(|(reason, _)| reason.clone()).collect();
     // Sources vary slowest: the order of the tables is source, site, sensor, window, band.
-    let mut conditions_out = Output::create(study, folder, "conditions")?;
-    let mut matchups_out = Output::create(study, folder, "matchups")?;
+    let mut conditions_out = Output::create(&study.tables, folder, "conditions")?;
+    let mut matchups_out = Output::create(&study.tables, folder, "matchups")?;
     for wind in &study.wind {
         for (number, (record, sources)) in matched.records.iter().zip(&matched.conditions).enumerate() {
             let Some(conditions) = sources.iter().find(|conditions| conditions.source == wind.id) else { continue };
@@ -408,50 +402,4 @@ pub fn write_tables(
     written.extend(matchups_out.finish()?);
     progress.finish();
     Ok(written)
-}
-
-/// One table in all the formats that the study asks for.
-pub(super) struct Output {
-    writers: Vec<(PathBuf, TableWriter)>,
-    dictionary: PathBuf,
-    columns: Option<Table>,
-}
-
-impl Output {
-    pub(super) fn create(study: &Study, folder: &Path, name: &str) -> Result<Self, Error> {
-        let mut writers = Vec::new();
-        for format in &study.tables {
-            let extension = match format {
-                TableFormat::Parquet => "parquet",
-                TableFormat::Csv => "csv",
-            };
-            let path = folder.join(format!("{name}.{extension}"));
-            let writer = TableWriter::create(&path)?;
-            writers.push((path, writer));
-        }
-        Ok(Self { writers, dictionary: folder.join(format!("{name}_columns.csv")), columns: None })
-    }
-
-    pub(super) fn append(&mut self, table: &Table) -> Result<(), Error> {
-        for (_, writer) in &mut self.writers {
-            writer.append(table)?;
-        }
-        if self.columns.is_none() {
-            self.columns = Some(table.without_rows());
-        }
-        Ok(())
-    }
-
-    pub(super) fn finish(self) -> Result<Vec<PathBuf>, Error> {
-        let mut written = Vec::new();
-        for (path, writer) in self.writers {
-            writer.finish()?;
-            written.push(path);
-        }
-        if let Some(columns) = self.columns {
-            write_dictionary(&self.dictionary, &columns)?;
-            written.push(self.dictionary);
-        }
-        Ok(written)
-    }
 }

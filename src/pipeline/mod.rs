@@ -10,6 +10,7 @@ mod look_up_moments;
 mod look_up_sea;
 mod look_up_waves;
 mod matching;
+mod output;
 mod progress;
 mod provenance;
 mod reporting;
@@ -20,6 +21,7 @@ mod sensitivity;
 mod simulate;
 mod spectra_sampling;
 mod spreading;
+mod stencils;
 
 pub use check::{CheckReport, check_study};
 pub use check_spectra::SpectraCheck;

@@ -1,52 +1,29 @@
 //! Wind at the sites of a study: nodes first, then only their blocks, each once, in parallel; memory follows sites and steps.
 
 use super::progress::Progress;
+use super::stencils::Stencils;
 use crate::io::netcdf::{NetcdfError, WindKind, WindSource};
 use crate::model::{
-    Block, FieldSource, FlagSet, Grid, Missing, NodeId, NodeRequest, NodeUse, Point, Site, Slab, SpatialRule, Stencil,
-    Track, WindSeries,
+    Block, FieldSource, FlagSet, Grid, Missing, NodeId, NodeRequest, NodeUse, Point, Site, Slab, SpatialRule, Track,
+    WindSeries,
 };
 use crate::science::sample::{NodeWinds, distance_km, stencil, wind_at_site};
-use crate::units::Window;
+use crate::units::{Instant, Window};
 use rayon::prelude::*;
 use std::collections::BTreeSet;
 
 /// Slabs that are decoded before their values are put in place: bounds the memory, keeps all threads busy.
 const SLABS_AT_A_TIME: usize = 64;
 
-/// The stencil of a site at each step that is asked for.
-enum Stencils {
-    /// A site that stays.
-    Fixed(Result<Stencil, Missing>),
-    /// One for each step.
-    Moving(Vec<Result<Stencil, Missing>>),
-}
-
-impl Stencils {
-    fn of(grid: &Grid, site: &Site, rule: &SpatialRule, steps: &[crate::units::Instant]) -> Self {
-        match &site.track {
-            Track::Fixed(place) => Self::Fixed(stencil(grid, *place, rule)),
-            Track::Moving(_) => Self::Moving(
-                steps
-                    .iter()
-                    .map(|step| site.track.at(*step).ok_or(Missing::NoPosition).and_then(|p| stencil(grid, p, rule)))
-                    .collect(),
-            ),
-        }
-    }
-
-    fn at(&self, step: usize) -> &Result<Stencil, Missing> {
-        match self {
-            Self::Fixed(stencil) => stencil,
-            Self::Moving(stencils) => &stencils[step],
-        }
-    }
-
-    fn all(&self) -> &[Result<Stencil, Missing>] {
-        match self {
-            Self::Fixed(stencil) => std::slice::from_ref(stencil),
-            Self::Moving(stencils) => stencils,
-        }
+fn stencils(grid: &Grid, site: &Site, rule: &SpatialRule, steps: &[Instant]) -> Stencils {
+    match &site.track {
+        Track::Fixed(place) => Stencils::Fixed(stencil(grid, *place, rule)),
+        Track::Moving(_) => Stencils::Moving(
+            steps
+                .iter()
+                .map(|step| site.track.at(*step).ok_or(Missing::NoPosition).and_then(|p| stencil(grid, p, rule)))
+                .collect(),
+        ),
     }
 }
 
@@ -70,7 +47,7 @@ pub fn sample_wind(
     });
     let steps = steps_of(&meta.steps, window);
     let stencils: Vec<Stencils> =
-        sites.iter().map(|site| Stencils::of(&meta.grid, site, rule, &meta.steps[steps.clone()])).collect();
+        sites.iter().map(|site| stencils(&meta.grid, site, rule, &meta.steps[steps.clone()])).collect();
     let nodes: Vec<NodeId> = stencils
         .iter()
         .flat_map(Stencils::all)

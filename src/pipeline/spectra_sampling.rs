@@ -2,6 +2,7 @@
 //! step, never spectra.
 
 use super::progress::Progress;
+use super::stencils::Stencils;
 use crate::io::netcdf::{NetcdfError, SpectraPlace, SpectraSlab, SpectraSource};
 use crate::model::{
     Flag, FlagSet, Missing, NodeId, NodeUse, Point, SEA_ROWS, SeaRow, Site, SpatialRule, SpectraSeries, Stencil, Track,
@@ -102,28 +103,6 @@ fn steps_of(steps: &[Instant], window: Option<Window>) -> std::ops::Range<usize>
     let first = steps.partition_point(|step| *step <= window.start).saturating_sub(1);
     let last = (steps.partition_point(|step| *step < window.end) + 1).min(steps.len());
     first.min(last)..last
-}
-
-/// The stencil of a site at each step.
-enum Stencils {
-    Fixed(Result<Stencil, Missing>),
-    Moving(Vec<Result<Stencil, Missing>>),
-}
-
-impl Stencils {
-    fn at(&self, step: usize) -> &Result<Stencil, Missing> {
-        match self {
-            Self::Fixed(stencil) => stencil,
-            Self::Moving(stencils) => &stencils[step],
-        }
-    }
-
-    fn all(&self) -> &[Result<Stencil, Missing>] {
-        match self {
-            Self::Fixed(stencil) => std::slice::from_ref(stencil),
-            Self::Moving(stencils) => stencils,
-        }
-    }
 }
 
 fn stencils(source: &SpectraSource, site: &Site, rule: &SpatialRule, steps: &[Instant], first: usize) -> Stencils {

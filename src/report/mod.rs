@@ -53,7 +53,6 @@ pub use radiated_spectra::*;
 pub(crate) use relation_text::p_text;
 pub use relation_text::{findings, relation_text};
 pub use residual::*;
-pub(crate) use sensitivity_text::by_choice;
 pub use sensitivity_text::sensitivity_text;
 pub use site_map::*;
 pub use spreading_text::spreading_text;

@@ -29,10 +29,7 @@ pub fn relation_text(fitted: &Fitted) -> String {
                 relation.verdict_text()
             ));
         }
-        let of_bands = |sensor: &&FittedSensor| {
-            (&sensor.source, &sensor.site, &sensor.sensor) == (&first.source, &first.site, &first.sensor)
-        };
-        for sentence in findings(bands, fitted.sensors.iter().find(of_bands)) {
+        for sentence in findings(bands, fitted.sensor_of(first)) {
             out.push_str(&format!("  {sentence}\n"));
         }
     }

@@ -1,17 +1,8 @@
 //! `[[exclude]]`: conditions and lists of intervals.
 
-use crate::support::{project, underwind, write};
+use crate::support::{project, rows, underwind, write};
 use std::collections::BTreeMap;
 use std::path::Path;
-
-fn rows(path: &Path) -> Vec<BTreeMap<String, String>> {
-    let mut reader = csv::Reader::from_path(path).unwrap();
-    let names = reader.headers().unwrap().clone();
-    reader
-        .records()
-        .map(|row| names.iter().map(str::to_owned).zip(row.unwrap().iter().map(str::to_owned)).collect())
-        .collect()
-}
 
 /// The demo's study with absolute paths and these lines more.
 fn study(folder: &Path, more: &str) {

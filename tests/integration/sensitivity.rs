@@ -1,18 +1,7 @@
 //! `fit --sensitivity`: what other choices do to the result.
 
-use crate::support::{project, underwind};
+use crate::support::{project, rows, underwind};
 use std::collections::BTreeMap;
-use std::path::Path;
-
-/// Rows of a CSV table by column name.
-fn rows(path: &Path) -> Vec<BTreeMap<String, String>> {
-    let mut reader = csv::Reader::from_path(path).unwrap();
-    let names = reader.headers().unwrap().clone();
-    reader
-        .records()
-        .map(|row| names.iter().map(str::to_owned).zip(row.unwrap().iter().map(str::to_owned)).collect())
-        .collect()
-}
 
 fn number(row: &BTreeMap<String, String>, name: &str) -> Option<f64> {
     row[name].parse().ok()

@@ -3,8 +3,8 @@
 use crate::Error;
 use crate::config::TableFormat;
 use crate::io::replace_file::replace_with;
-use crate::io::table::{TableWriter, write_dictionary};
-use crate::model::{Fitted, Table};
+use crate::model::Fitted;
+use crate::pipeline::output::write_table;
 use crate::report::columns::{
     bands_together_table, relation_table, replicates_table, segments_table, wind_error_table,
 };
@@ -15,40 +15,20 @@ use std::path::{Path, PathBuf};
 /// # Errors
 /// When a file cannot be written.
 pub fn write_relations(fitted: &Fitted, formats: &[TableFormat], folder: &Path) -> Result<Vec<PathBuf>, Error> {
-    let mut written = write_table("relation", &relation_table(&fitted.bands), formats, folder)?;
+    let mut written = write_table(formats, folder, "relation", &relation_table(&fitted.bands))?;
     let json = folder.join("relation.json");
     replace_with(&json, relations_json(fitted).as_bytes())?;
     written.push(json);
-    written.extend(write_table("bands_together", &bands_together_table(fitted), formats, folder)?);
+    written.extend(write_table(formats, folder, "bands_together", &bands_together_table(fitted))?);
     if fitted.bands.iter().any(|band| !band.relation.deployments.is_empty()) {
-        written.extend(write_table("segments", &segments_table(fitted), formats, folder)?);
+        written.extend(write_table(formats, folder, "segments", &segments_table(fitted))?);
     }
     if fitted.bands.iter().any(|band| band.relation.replicates.is_some()) {
-        written.extend(write_table("replicates", &replicates_table(&fitted.bands), formats, folder)?);
+        written.extend(write_table(formats, folder, "replicates", &replicates_table(&fitted.bands))?);
     }
     if fitted.bands.iter().any(|band| !band.checks.wind_error.is_empty()) {
-        written.extend(write_table("wind_error", &wind_error_table(&fitted.bands), formats, folder)?);
+        written.extend(write_table(formats, folder, "wind_error", &wind_error_table(&fitted.bands))?);
     }
-    Ok(written)
-}
-
-/// Writes a small table in each format, with its dictionary.
-fn write_table(name: &str, table: &Table, formats: &[TableFormat], folder: &Path) -> Result<Vec<PathBuf>, Error> {
-    let mut written = Vec::new();
-    for format in formats {
-        let extension = match format {
-            TableFormat::Parquet => "parquet",
-            TableFormat::Csv => "csv",
-        };
-        let path = folder.join(format!("{name}.{extension}"));
-        let mut writer = TableWriter::create(&path)?;
-        writer.append(table)?;
-        writer.finish()?;
-        written.push(path);
-    }
-    let dictionary = folder.join(format!("{name}_columns.csv"));
-    write_dictionary(&dictionary, table)?;
-    written.push(dictionary);
     Ok(written)
 }
 

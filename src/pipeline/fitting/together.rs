@@ -104,11 +104,7 @@ impl Together {
         };
         let mut found = Self { levels_db: self.levels_db.iter().map(keep).collect(), ..self }.fit_and_check(options);
         found.add_unscreened(all);
-        found.screen = Some(Screened {
-            events: events.events,
-            windows: events.marked.iter().filter(|marked| **marked).count(),
-            kept_windows: events.kept_rows,
-        });
+        found.screen = Some(events.summary());
         found
     }
 

@@ -1,20 +1,18 @@
 //! Figures of the choices: for each sensor all bands at once, and each band by itself.
 
-use crate::model::{Moved, Refit, Resolved};
+use crate::model::{Moved, Refit};
 use crate::numerics::quantile::median;
 use crate::pipeline::reporting::words::{estimate, file_part, reference};
-use crate::report::{Estimate, Figure, IntervalColumn, IntervalRow, IntervalRows, by_choice, interval_rows};
+use crate::report::{Estimate, Figure, IntervalColumn, IntervalRow, IntervalRows, interval_rows};
 
 /// The figures with their file names.
 pub(super) fn of_choices(refits: &[Refit]) -> Vec<(String, Figure)> {
     let mut figures = Vec::new();
-    let same_sensor = |a: &Refit, b: &Refit| (&a.base.site, &a.base.sensor) == (&b.base.site, &b.base.sensor);
-    for sensor in refits.chunk_by(same_sensor) {
+    for sensor in refits.chunk_by(Refit::of_same_sensor) {
         let base = &sensor[0].base;
         let stem = format!("{}_{}_{}", file_part(&base.source.0), file_part(&base.site), file_part(&base.sensor));
         let title = format!("Site {}, sensor {}: what the choices move", base.site, base.sensor);
-        let all: Vec<&Refit> = sensor.iter().collect();
-        figures.push((format!("{stem}_sensitivity"), interval_rows(&over_bands(&title, &all))));
+        figures.push((format!("{stem}_sensitivity"), interval_rows(&over_bands(&title, sensor))));
         let mut bands: Vec<u64> = Vec::new();
         for refit in sensor {
             let band = refit.base.band.map_or(0, |band| band.centre_hz.to_bits());
@@ -39,7 +37,7 @@ fn column_label(quantity: Moved, level: &str) -> String {
 }
 
 /// Shifts over all bands: the median with the range.
-fn over_bands(title: &str, refits: &[&Refit]) -> IntervalRows {
+fn over_bands(title: &str, refits: &[Refit]) -> IntervalRows {
     let columns = Moved::ALL.map(|quantity| {
         let halves: Vec<f64> = refits
             .iter()
@@ -55,14 +53,19 @@ fn over_bands(title: &str, refits: &[&Refit]) -> IntervalRows {
         };
         IntervalColumn { label: label.to_owned(), base }
     });
-    let rows = by_choice(refits).into_iter().map(|(about, taken, refits)| {
+    let rows = refits.chunk_by(Refit::of_same_choice).map(|refits| {
         let values = Moved::ALL.map(|quantity| {
             let shifts: Vec<f64> = refits.iter().filter_map(|refit| refit.shift(quantity)).collect();
             let (low, high) =
                 shifts.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), s| (low.min(*s), high.max(*s)));
             Estimate::value(median(&shifts), low, high)
         });
-        IntervalRow { group: about.to_owned(), label: taken.to_owned(), chosen: false, values: values.to_vec() }
+        IntervalRow {
+            group: refits[0].choice.about.to_owned(),
+            label: refits[0].choice.taken.clone(),
+            chosen: false,
+            values: values.to_vec(),
+        }
     });
     IntervalRows {
         title: title.to_owned(),
@@ -78,20 +81,19 @@ fn over_bands(title: &str, refits: &[&Refit]) -> IntervalRows {
 fn of_one_band(title: &str, refits: &[&Refit]) -> IntervalRows {
     let base = &refits[0].base;
     let level = base.kind.map_or("dB", reference);
-    let shown = |value: Resolved| estimate(value);
     let columns = Moved::ALL
-        .map(|quantity| IntervalColumn { label: column_label(quantity, level), base: shown(quantity.of(base)) });
+        .map(|quantity| IntervalColumn { label: column_label(quantity, level), base: estimate(quantity.of(base)) });
     let mut rows = vec![IntervalRow {
         group: "study".to_owned(),
         label: "as in the study file".to_owned(),
         chosen: true,
-        values: Moved::ALL.map(|quantity| shown(quantity.of(base))).to_vec(),
+        values: Moved::ALL.map(|quantity| estimate(quantity.of(base))).to_vec(),
     }];
     rows.extend(refits.iter().map(|refit| IntervalRow {
         group: refit.choice.about.to_owned(),
         label: refit.choice.taken.clone(),
         chosen: false,
-        values: Moved::ALL.map(|quantity| shown(quantity.of(&refit.other))).to_vec(),
+        values: Moved::ALL.map(|quantity| estimate(quantity.of(&refit.other))).to_vec(),
     }));
     IntervalRows {
         title: title.to_owned(),

@@ -5,7 +5,8 @@ mod figures;
 
 use super::fitting::fit_conditions;
 use super::inputs::Inputs;
-use super::matching::{Matched, Output, bring_together};
+use super::matching::{Matched, bring_together};
+use super::output::write_table;
 use super::progress::{Progress, Silent};
 use super::reporting::write_figure;
 use crate::Error;
@@ -88,9 +89,7 @@ fn fit_first(study: &Study, matched: &Matched, lag_windows: i32) -> Vec<FittedBa
 /// # Errors
 /// When a file cannot be written.
 pub(super) fn write_sensitivity(study: &Study, refits: &[Refit], folder: &Path) -> Result<Vec<PathBuf>, Error> {
-    let mut output = Output::create(study, folder, "sensitivity")?;
-    output.append(&sensitivity_table(refits))?;
-    let mut written = output.finish()?;
+    let mut written = write_table(&study.tables, folder, "sensitivity", &sensitivity_table(refits))?;
     let figure_folder = folder.join("figures");
     std::fs::create_dir_all(&figure_folder).map_err(|source| Error::Folder { path: figure_folder.clone(), source })?;
     for (name, figure) in figures::of_choices(refits) {

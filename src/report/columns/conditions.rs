@@ -2,7 +2,7 @@
 
 use super::sampled::repeated;
 use crate::model::{ColumnData, Conditions, Missing, SeaConditions, Table, WindowWind};
-use crate::units::{Compass, Window};
+use crate::units::Window;
 
 /// The wind of one source over a sensor's windows, and the sea where there are spectra.
 ///
@@ -58,7 +58,7 @@ pub fn conditions_table(
         "wind_from_direction_deg",
         "degree",
         "direction that the mean wind of the window comes from, clockwise from true north; none for a calm",
-        number(from_direction_deg),
+        number(WindowWind::from_direction_deg),
     );
     table.push(
         "step_bridged_s",
@@ -105,9 +105,4 @@ pub(super) fn push_windows(table: &mut Table, windows: impl Iterator<Item = Wind
         "first instant after the window",
         ColumnData::Time(windows.map(|w| w.end.0).collect()),
     );
-}
-
-/// Direction that a mean wind comes from, degrees; NaN where it has none.
-pub(super) fn from_direction_deg(wind: &WindowWind) -> f64 {
-    Compass::of_wind(wind.eastward_mean_m_s, wind.northward_mean_m_s).map_or(f64::NAN, Compass::degrees)
 }

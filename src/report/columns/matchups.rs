@@ -1,6 +1,6 @@
 //! Matchups: one row per source, site, sensor, window and band.
 
-use super::conditions::{from_direction_deg, push_windows};
+use super::conditions::push_windows;
 use super::sampled::repeated;
 use crate::model::{
     BandLevels, ColumnData, Conditions, LevelKind, LevelStatistic, Missing, SeaRows, SensorRecord, Table, WindowWind,
@@ -68,18 +68,14 @@ pub fn matchups_table(
         "1",
         "number of level samples behind the level",
         ColumnData::Integer(
-            windows.clone().flat_map(|k| record.bands.iter().map(move |band| i64::from(samples(band, k)))).collect(),
+            windows.clone().flat_map(|k| record.bands.iter().map(move |band| i64::from(band.samples_at(k)))).collect(),
         ),
     );
     table.push(
         "level_seconds",
         "s",
         "time that the level samples cover",
-        cells(&|band, k| match band.seconds.get(k) {
-            Some(seconds) => f64::from(*seconds),
-            None if band.level_db[k].is_finite() => record.windows[k].length_ms() as f64 / 1e3,
-            None => 0.0,
-        }),
+        cells(&|band, k| band.seconds_at(k, record.windows[k].length_ms() as f64 / 1e3)),
     );
     table.push(
         "wind_speed_mean_m_s",
@@ -98,7 +94,7 @@ pub fn matchups_table(
         "wind_from_direction_deg",
         "degree",
         "direction that the mean wind comes from, clockwise from true north",
-        wind(from_direction_deg),
+        wind(WindowWind::from_direction_deg),
     );
     if let Some(sea) = sea {
         super::sea::push_matchups(&mut table, record, sea);
@@ -154,10 +150,6 @@ fn push_use(
         let data = ColumnData::Text { texts: rules.to_vec(), codes: rule_codes };
         table.push("excluded_by", "", "the study's rule that leaves the pair out, by its reason", data);
     }
-}
-
-fn samples(band: &BandLevels, k: usize) -> u32 {
-    band.samples.get(k).copied().unwrap_or_else(|| u32::from(band.level_db[k].is_finite()))
 }
 
 fn deployments(record: &SensorRecord, windows: &Range<usize>) -> ColumnData {

@@ -9,11 +9,7 @@ type Pick = fn(&DeploymentFit) -> Resolved;
 pub fn segments_table(fitted: &Fitted) -> Table {
     let mut rows: Vec<(&FittedBand, &DeploymentFit, &str)> = Vec::new();
     for band in &fitted.bands {
-        let here = fitted
-            .sensors
-            .iter()
-            .find(|known| (&known.source, &known.site, &known.sensor) == (&band.source, &band.site, &band.sensor));
-        let names = here.map_or(&[] as &[String], |sensor| &sensor.segments);
+        let names = fitted.sensor_of(band).map_or(&[] as &[String], |sensor| &sensor.segments);
         rows.extend(band.relation.deployments.iter().map(|own| {
             let name = names.get(own.deployment as usize).map_or("", String::as_str);
             (band, own, name)

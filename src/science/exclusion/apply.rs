@@ -1,8 +1,8 @@
 //! Rules applied to the pairs of one sensor and wind source.
 
 use super::expression::Expression;
-use crate::model::{Band, BandLevels, Conditions, Exclusion, SensorRecord};
-use crate::units::{Compass, Window};
+use crate::model::{Band, BandLevels, Conditions, Exclusion, SensorRecord, WindowWind};
+use crate::units::Window;
 
 /// Columns that conditions may use. Those up to `year` belong to the window, the others to the band as well.
 pub const RULE_COLUMNS: [&str; 12] = [
@@ -105,9 +105,7 @@ fn of_window(record: &SensorRecord, conditions: &Conditions, k: usize, column: u
         0 => wind.map_or(f64::NAN, |wind| wind.speed_mean_m_s),
         1 => wind.map_or(f64::NAN, |wind| wind.speed_of_mean_m_s),
         2 => wind.map_or(f64::NAN, |wind| wind.scalar_speed_mean_m_s),
-        3 => wind
-            .and_then(|wind| Compass::of_wind(wind.eastward_mean_m_s, wind.northward_mean_m_s))
-            .map_or(f64::NAN, Compass::degrees),
+        3 => wind.map_or(f64::NAN, WindowWind::from_direction_deg),
         4 => calendar().map_or(f64::NAN, |(_, _, hour)| hour),
         5 => calendar().map_or(f64::NAN, |(_, month, _)| f64::from(month)),
         _ => calendar().map_or(f64::NAN, |(year, _, _)| f64::from(year)),
@@ -116,11 +114,10 @@ fn of_window(record: &SensorRecord, conditions: &Conditions, k: usize, column: u
 
 fn of_level(record: &SensorRecord, band: &BandLevels, k: usize, column: usize) -> f64 {
     let length_s = record.windows[k].length_ms() as f64 / 1e3;
-    let there = band.level_db[k].is_finite();
     match column {
         7 => band.level_db[k],
-        8 => band.samples.get(k).map_or(f64::from(u8::from(there)), |samples| f64::from(*samples)),
-        9 => band.seconds.get(k).map_or(if there { length_s } else { 0.0 }, |seconds| f64::from(*seconds)),
+        8 => f64::from(band.samples_at(k)),
+        9 => band.seconds_at(k, length_s),
         10 => band.band.centre_hz,
         _ => length_s,
     }
@@ -160,7 +157,7 @@ fn by_intervals(record: &SensorRecord, intervals: &[Interval], number: usize, ex
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::model::{LevelKind, LevelStatistic, SourceId, WindowWind};
+    use crate::model::{LevelKind, LevelStatistic, SourceId};
     use crate::units::Instant;
 
     fn hour(k: i64) -> Instant {

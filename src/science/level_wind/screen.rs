@@ -4,6 +4,7 @@
 //! select on the outcome. A squall of a few hours raises many bands too and is marked as well, so the relation with and without
 //! the marked rows should be shown side by side.
 
+use crate::model::Screened;
 use crate::numerics::quantile::median;
 
 /// Choices of the screen.
@@ -42,6 +43,17 @@ pub struct ScreenedEvents {
     pub events: usize,
     /// Number of rows that were raised but belong to longer events, which are kept.
     pub kept_rows: usize,
+}
+
+impl ScreenedEvents {
+    /// How many events and windows that are.
+    pub fn summary(&self) -> Screened {
+        Screened {
+            events: self.events,
+            windows: self.marked.iter().filter(|marked| **marked).count(),
+            kept_windows: self.kept_rows,
+        }
+    }
 }
 
 /// Marks short events in which most bands are raised at once. Columns are bands, rows are windows in any order; NaN is missing.

@@ -1,7 +1,7 @@
 //! Checks beside the relation, as a user gets them: `fit --matchups`, tables, words.
 
 use super::simulator::{Scatter, Truth, record};
-use crate::support::underwind;
+use crate::support::{rows, underwind};
 use std::collections::BTreeMap;
 use std::fmt::Write as _;
 use std::path::Path;
@@ -22,15 +22,6 @@ fn pairs(path: &Path, bands: u32, samples: usize, lag: usize, change: impl Fn(u3
         }
     }
     std::fs::write(path, text).unwrap();
-}
-
-fn rows(path: &Path) -> Vec<BTreeMap<String, String>> {
-    let mut reader = csv::Reader::from_path(path).unwrap();
-    let names = reader.headers().unwrap().clone();
-    reader
-        .records()
-        .map(|row| names.iter().map(str::to_owned).zip(row.unwrap().iter().map(str::to_owned)).collect())
-        .collect()
 }
 
 fn number(row: &BTreeMap<String, String>, name: &str) -> f64 {

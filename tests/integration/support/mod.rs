@@ -1,5 +1,6 @@
 //! Helpers that speak the trade: temporary folders, the program, places of shared data.
 
+use std::collections::BTreeMap;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
 
@@ -69,4 +70,14 @@ impl Run {
 /// Writes a file in a folder.
 pub(crate) fn write(folder: &Path, name: &str, text: &str) {
     std::fs::write(folder.join(name), text).expect("a temporary folder can be written");
+}
+
+/// Rows of a CSV table by column name.
+pub(crate) fn rows(path: &Path) -> Vec<BTreeMap<String, String>> {
+    let mut reader = csv::Reader::from_path(path).unwrap();
+    let names = reader.headers().unwrap().clone();
+    reader
+        .records()
+        .map(|row| names.iter().map(str::to_owned).zip(row.unwrap().iter().map(str::to_owned)).collect())
+        .collect()
 }
