@@ -51,9 +51,7 @@ pub(super) fn spread(args: &RunArgs, terminal: &Terminal) -> Result<(), Ending> 
     let outcome = pipeline::run(&study, Stage::Spread, terminal)?;
     remarks(&outcome, terminal);
     let text = if args.json {
-        let mut text = serde_json::to_string_pretty(&outcome.spreading).expect("plain data is JSON");
-        text.push('\n');
-        text
+        pipeline::spreading_json(&outcome.spreading)
     } else {
         format!("{}\n{}", spreading_text(&outcome.spreading), files(&study, &outcome))
     };

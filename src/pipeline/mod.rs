@@ -38,3 +38,4 @@ pub use sampling::sample_wind;
 pub use sea::Sea;
 pub use simulate::simulate_study;
 pub use spectra_sampling::{SpectraRules, sample_spectra};
+pub use spreading::spreading_json;

@@ -15,7 +15,8 @@ underwind relates underwater sound levels to the modelled wind overhead.
 
 It reads band levels from one or more sensors and the 10 m wind of an atmosphere model, takes the wind \
 at every sensor for every level, and fits, band by band, the quiet floor, the slope and the wind speed \
-at which the band stops responding. It writes tables, figures and one HTML page.
+at which the band stops responding. With directional wave spectra it also compares the sound that \
+opposing waves radiate with the sound measured. It writes tables, figures and one HTML page.
 
 A study file (TOML) names the inputs. Start with `underwind check STUDY`: it says what was understood \
 of every input and computes nothing. `underwind run STUDY` does the whole job.";

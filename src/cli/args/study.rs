@@ -31,7 +31,7 @@ pub(crate) struct CheckArgs {
 pub(crate) struct RunArgs {
     #[command(flatten)]
     pub(crate) study: StudyArgs,
-    /// Print the relation table as JSON instead of text
+    /// Print the results as JSON instead of text
     #[arg(long)]
     pub(crate) json: bool,
 }

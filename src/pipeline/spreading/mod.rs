@@ -7,5 +7,6 @@ mod page;
 
 pub(super) use compare::compare_spreading;
 pub(super) use figures::{SpreadFigures, spread_figures};
+pub use outputs::spreading_json;
 pub(super) use outputs::write_spreading;
 pub(super) use page::spreading_section;

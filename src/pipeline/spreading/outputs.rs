@@ -20,9 +20,14 @@ pub(in crate::pipeline) fn write_spreading(
     let mut written = write_table(&study.tables, folder, "spreading", &spreading_table(all))?;
     written.extend(write_table(&study.tables, folder, "testability", &testability_table(all))?);
     let json = folder.join("spreading.json");
-    let mut text = serde_json::to_string_pretty(all).expect("plain data is JSON");
-    text.push('\n');
-    replace_with(&json, text.as_bytes())?;
+    replace_with(&json, spreading_json(all).as_bytes())?;
     written.push(json);
     Ok(written)
+}
+
+/// The comparison as JSON.
+pub fn spreading_json(all: &[SensorSpreading]) -> String {
+    let mut text = serde_json::to_string_pretty(all).expect("plain data is JSON");
+    text.push('\n');
+    text
 }
