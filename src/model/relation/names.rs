@@ -58,6 +58,7 @@ causes! {
     /// Which scatter model describes the band.
     ScatterFamily {
         FixedPowerSum = "fixed power sum": "floor and wind part add in power without fluctuating against each other",
+        HardCorner = "hard corner": "the higher of floor and wind part counts, with scatter of the whole level; they do not add in power",
         TotalScatter = "total scatter": "the whole level fluctuates, with occasional upward outliers",
         RandomFloor = "random floor": "floor and wind part fluctuate on their own before they add in power",
         RandomFloorWithShips = "random floor with ships": "as with a random floor, and passing ships add power part of the time",

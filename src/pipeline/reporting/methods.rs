@@ -155,6 +155,11 @@ fn law(fitted: &[FittedBand], study: &Study) -> String {
         ScatterModel::FixedPowerSum => {
             format!("{formula} Floor and wind part add in power without scatter of their own.")
         }
+        ScatterModel::HardCorner => {
+            format!(
+                "{formula} Instead of that sum the higher of floor and wind part was taken (hard corner), as asked for."
+            )
+        }
         ScatterModel::Estimated => {
             let counts: Vec<String> = ScatterFamily::ALL
                 .iter()
@@ -163,7 +168,7 @@ fn law(fitted: &[FittedBand], study: &Study) -> String {
                 .map(|(wanted, count)| format!("{} in {count} of {} relations", wanted.name(), fitted.len()))
                 .collect();
             format!(
-                "{formula} The scatter of floor and wind part about their means, and passing ships added to the floor in power, bend the mean level near the crossover; a model of that scatter was fitted to the residuals, and the simplest one kept that the data do not reject ({}).",
+                "{formula} The scatter of floor and wind part about their means, and passing ships added to the floor in power, bend the mean level near the crossover; a model of that scatter was fitted to the residuals, and the simplest one kept that the data do not reject; the higher of floor and wind part (hard corner) was taken instead of the sum only where it predicted held-out blocks of time better by two standard errors ({}).",
                 counts.join(", ")
             )
         }

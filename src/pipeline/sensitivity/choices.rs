@@ -94,13 +94,17 @@ fn fit_options(study: &Study, deployments: bool, add: &mut dyn FnMut(&'static st
             add("loss", taken.to_owned(), Change::Fit(Box::new(other)));
         }
     }
-    let (taken, scatter) = match options.scatter {
-        ScatterModel::Estimated => ("steady floor, fixed", ScatterModel::FixedPowerSum),
-        ScatterModel::FixedPowerSum => ("scatter estimated", ScatterModel::Estimated),
-    };
-    let mut other = study.clone();
-    other.relation.options.scatter = scatter;
-    add("floor and wind part", taken.to_owned(), Change::Fit(Box::new(other)));
+    for (taken, scatter) in [
+        ("scatter estimated", ScatterModel::Estimated),
+        ("steady floor, fixed", ScatterModel::FixedPowerSum),
+        ("the higher counts (hard corner)", ScatterModel::HardCorner),
+    ] {
+        if scatter != options.scatter {
+            let mut other = study.clone();
+            other.relation.options.scatter = scatter;
+            add("floor and wind part", taken.to_owned(), Change::Fit(Box::new(other)));
+        }
+    }
     if deployments {
         for (taken, segments) in [
             ("pooled", Segments::Pooled),

@@ -18,6 +18,8 @@ pub(crate) const TABLE_LENGTH: usize = 91;
 pub(crate) const NEPER_PER_DB: f64 = std::f64::consts::LN_10 / 10.0;
 /// Least scale of the scatter, dB.
 const LEAST_SCALE_DB: f64 = 0.1;
+/// Least rounding of a hard corner: the table needs a width.
+const LEAST_ROUNDING_DB: f64 = 1e-6;
 
 /// Gauss-Hermite nodes and weights for a standard normal variable (numpy 2.4.6, `hermegauss`), checked by moments below.
 const NORMAL_7: [(f64, f64); 7] = [
@@ -115,7 +117,9 @@ pub(crate) fn plain_table() -> RampTable {
 pub(crate) fn top_offset_db(table: &RampTable) -> f64 {
     /// 10 log10(1 + 10^4.5), the power sum at the top of the table.
     const POWER_SUM_AT_TOP_DB: f64 = 45.000_137_333_802_38;
-    table.end().1 - POWER_SUM_AT_TOP_DB
+    let (argument, value) = table.end();
+    // The table of a hard corner ends early: there the level is the wind part itself.
+    if argument < -TABLE_START_DB { value - argument } else { value - POWER_SUM_AT_TOP_DB }
 }
 
 fn arguments() -> impl Iterator<Item = f64> {
@@ -135,6 +139,16 @@ impl CornerTable {
     /// Fixed power sum with one scale everywhere.
     pub(crate) fn plain(scale_db: f64) -> Self {
         Self { h: plain_table(), scale_db: vec![scale_db; TABLE_LENGTH], scatter: Scatter::total(scale_db) }
+    }
+
+    /// The higher of floor and wind part, with one scale everywhere. As a mean over a class of winds does, the corner is
+    /// rounded: over `rounding_db` to both sides.
+    pub(crate) fn hard(scale_db: f64, rounding_db: f64) -> Self {
+        let rounding_db = rounding_db.max(LEAST_ROUNDING_DB);
+        // Cubic pieces with slope 0 at the left and 1 at the right end are here the parabola (d + r)^2 / (4 r), which is the
+        // mean of max(0, d') over d - r to d + r.
+        let h = RampTable::new(-rounding_db, 2.0 * rounding_db, vec![0.0, rounding_db]);
+        Self { h, scale_db: vec![scale_db; TABLE_LENGTH], scatter: Scatter::total(scale_db) }
     }
 
     /// For a scatter model.
@@ -295,6 +309,21 @@ mod tests {
             assert!((value - 10.0 * libm::log10(1.0 + libm::pow(10.0, d / 10.0))).abs() < 1e-6);
         }
         assert!(top_offset_db(&table.h).abs() < 1e-9);
+    }
+
+    #[test]
+    fn a_hard_corner_is_the_mean_of_the_higher_level_over_a_class() {
+        let table = CornerTable::hard(1.0, 0.3);
+        for d in [-5.0, -0.31, -0.2, 0.0, 0.1, 0.29, 0.5, 40.0] {
+            // Midpoint rule over the class.
+            let steps = 20_000;
+            let mean: f64 = (0..steps)
+                .map(|index| (d - 0.3 + 0.6 * (f64::from(index) + 0.5) / f64::from(steps)).max(0.0))
+                .sum::<f64>()
+                / f64::from(steps);
+            assert!((table.h.value_and_slope(d).0 - mean).abs() < 1e-7, "{d}");
+        }
+        assert!(top_offset_db(&table.h).abs() < 1e-12);
     }
 
     #[test]

@@ -1,9 +1,11 @@
 //! Which law predicts best: errors in held-out blocks of time.
 
+use super::fits::SHARP;
 use super::fits::{Band, Fit};
-use super::law::{CURVATURE_BOUNDS, Corner, Law};
+use super::law::{CURVATURE_BOUNDS, Corner, Law, Parameters};
 use super::record::Cells;
-use super::solve::{Bend, RowMeans, Solver, Stop};
+use super::robust::huber;
+use super::solve::{Bend, Form, RowMeans, Solver, Stop};
 use crate::numerics::quantile::quantile;
 
 /// Every fifth block is held out in turn.
@@ -32,6 +34,11 @@ impl Folds {
         folds
     }
 
+    /// Number of blocks.
+    pub(crate) fn blocks(&self) -> usize {
+        self.cells.count
+    }
+
     /// Predictions of a law in held-out folds. Fits start from the fit of all data and, where the law has a bend, from
     /// other bends: without them a knee fitted to most of the data is often missed.
     pub(crate) fn predictions(&self, band: &Band, law: Law, corner: Corner, full: &Fit) -> Predictions {
@@ -50,7 +57,7 @@ impl Folds {
         let form = band.form(law, corner);
         let deployments = band.rows.deployment_of_row();
         let mut solver = Solver::default();
-        let mut predictions = Predictions { error: 0.0, level_db: Vec::new() };
+        let mut predictions = Predictions { error: 0.0, level_db: Vec::new(), at: Vec::new() };
         for fold in 0..FOLDS {
             let training = self.training(band, fold);
             let rows = RowMeans {
@@ -74,6 +81,7 @@ impl Folds {
                 .collect();
             predictions.error += self.held_out_error(band, fold, &level_db);
             predictions.level_db.push(level_db);
+            predictions.at.push(best.1);
         }
         predictions
     }
@@ -89,10 +97,36 @@ impl Folds {
             let difference = (worse - better) * (worse + better - 2.0 * band.level_db[sample]);
             per_block[block] += band.rows.weight[row] * difference;
         }
-        let count = per_block.len() as f64;
-        let mean = per_block.iter().sum::<f64>() / count;
-        let variance = per_block.iter().map(|gain| (gain - mean) * (gain - mean)).sum::<f64>() / (count - 1.0).max(1.0);
-        mean * count.sqrt() / variance.sqrt().max(1e-12)
+        in_standard_errors(&per_block)
+    }
+
+    /// As [`Self::gain`], for fits with different corners: each has its own pseudo-values, so the levels themselves are
+    /// compared, with Huber's loss of the residuals in units of a scale.
+    pub(crate) fn gain_of_corner(
+        &self,
+        (from_band, from): (&Band, &Predictions),
+        (to_band, to): (&Band, &Predictions),
+        scale_db: f64,
+    ) -> f64 {
+        let mut per_block = vec![0.0; self.cells.count];
+        let losses = |band: &Band, predictions: &Predictions| -> Vec<f64> {
+            let sharp = band.sharp_table(SHARP);
+            let form = Form { table: sharp.as_ref().unwrap_or(&band.table.h), ..band.form(Law::Knee, Corner::Floor) };
+            let form = form.at_points();
+            let record = &band.record;
+            (0..record.len())
+                .map(|sample| {
+                    let at = &predictions.at[self.cells.of_sample[sample] % FOLDS];
+                    let fitted = form.level(at, band.rows.deployment_of_sample[sample], record.x[sample]).level_db;
+                    huber((record.level_db[sample] - fitted) / scale_db)
+                })
+                .collect()
+        };
+        let (from, to) = (losses(from_band, from), losses(to_band, to));
+        for (sample, &block) in self.cells.of_sample.iter().enumerate() {
+            per_block[block] += from[sample] - to[sample];
+        }
+        in_standard_errors(&per_block)
     }
 
     fn training(&self, band: &Band, held_out: usize) -> Training {
@@ -124,12 +158,22 @@ impl Folds {
     }
 }
 
+/// Mean of independent gains over its standard error.
+fn in_standard_errors(gains: &[f64]) -> f64 {
+    let count = gains.len() as f64;
+    let mean = gains.iter().sum::<f64>() / count;
+    let variance = gains.iter().map(|gain| (gain - mean) * (gain - mean)).sum::<f64>() / (count - 1.0).max(1.0);
+    mean * count.sqrt() / variance.sqrt().max(1e-12)
+}
+
 /// Predictions of held-out folds.
 pub(crate) struct Predictions {
     /// Weighted sum of squared errors of row means.
     pub(crate) error: f64,
     /// Level by fold and row, dB.
     level_db: Vec<Vec<f64>>,
+    /// Parameters by fold.
+    at: Vec<Parameters>,
 }
 
 struct Training {

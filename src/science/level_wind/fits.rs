@@ -6,6 +6,7 @@ use super::options::Segments;
 use super::record::{Record, Rows};
 use super::solve::{Bend, Form, RowMeans, Solver, Stop};
 use super::start;
+use crate::numerics::ramp_table::RampTable;
 
 /// A fit and its weighted sum of squares.
 #[derive(Debug, Clone)]
@@ -34,6 +35,8 @@ pub(crate) struct Band {
     /// Their means by row.
     pub(crate) row_level_db: Vec<f64>,
     pub(crate) table: CornerTable,
+    /// How far to both sides a hard corner is rounded in a class of winds; nothing where the corner is soft.
+    pub(crate) hard_corner_rounding_db: Option<f64>,
     pub(crate) least_floor_db: f64,
     /// Onsets that are tried, in x, increasing.
     pub(crate) onsets: Vec<f64>,
@@ -197,8 +200,25 @@ impl Band {
         let mut polished = at.clone();
         // A knee that is sharp between samples has many shallow minima; rounding it over a few samples leaves one.
         let form = Form { width: 0.25 * BIN_WIDTH, ..self.form(law, corner) };
-        Solver::default().minimise(&samples, &form, self.bend(law), STOP, &mut polished);
+        let mut improve =
+            |form: &Form<'_>| Solver::default().minimise(&samples, form, self.bend(law), STOP, &mut polished);
+        match self.sharp_table(0.25).zip(self.sharp_table(SHARP)) {
+            // A hard corner as well.
+            Some((rounded, sharp)) => {
+                improve(&Form { table: &rounded, ..form });
+                improve(&Form { table: &sharp, width: SHARP * BIN_WIDTH, ..form });
+            }
+            None => {
+                improve(&form);
+            }
+        }
         polished
+    }
+
+    /// The table of a hard corner that is rounded over this share of a class; nothing where the corner is soft.
+    pub(crate) fn sharp_table(&self, share: f64) -> Option<RampTable> {
+        let rounding_db = self.hard_corner_rounding_db?;
+        Some(CornerTable::hard(1.0, share * rounding_db).h)
     }
 
     /// Fitted level at every sample, dB.
@@ -238,6 +258,9 @@ impl Band {
         (sum / self.record.len().max(1) as f64).sqrt()
     }
 }
+
+/// Share of a class over which a corner or a knee is rounded where single samples are meant.
+pub(crate) const SHARP: f64 = 0.02;
 
 /// When the last iteration of a fit ends.
 const FINE: Stop = Stop { iterations: 60, tolerance: 1e-10 };

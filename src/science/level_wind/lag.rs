@@ -7,6 +7,7 @@ use super::law::{Corner, Law, x_of};
 use super::options::Segments;
 use super::point::onset_limits;
 use super::record::{Record, Rows};
+use super::robust::huber;
 use super::start;
 use crate::model::LEAST_WIND_M_S;
 use crate::numerics::quantile::median;
@@ -179,6 +180,7 @@ fn quick_fit(times_ms: &[i64], wind_m_s: &[f64], level_db: &[f64]) -> Option<(Ba
         segments: Segments::Pooled,
         level_db: medians,
         table: CornerTable::plain(1.0),
+        hard_corner_rounding_db: None,
         least_floor_db: lowest - 20.0,
         // A lag shows long before the onset is sharp: a coarse profile will do.
         onsets: grid(low, high, 8),
@@ -197,7 +199,6 @@ fn scale_without_lag(aligned: &Aligned, index: usize) -> Option<f64> {
 /// Sum of held-out Huber losses by block.
 fn block_losses(aligned: &Aligned, wind_m_s: &[f64], blocks: &[usize], count: usize, scale_db: f64) -> Vec<f64> {
     const FOLDS: usize = 5;
-    const HUBER: f64 = 1.345;
     let mut losses = vec![0.0; count];
     for fold in 0..FOLDS {
         let train: Vec<usize> = (0..blocks.len()).filter(|&row| blocks[row] % FOLDS != fold).collect();
@@ -221,8 +222,7 @@ fn block_losses(aligned: &Aligned, wind_m_s: &[f64], blocks: &[usize], count: us
         let form = band.form(Law::Knee, Corner::Floor).at_points();
         for row in (0..blocks.len()).filter(|&row| blocks[row] % FOLDS == fold) {
             let x = x_of(wind_m_s[row].max(LEAST_WIND_M_S));
-            let off = (aligned.level_db[row] - form.level(&at, 0, x).level_db).abs() / scale_db;
-            losses[blocks[row]] += if off < HUBER { 0.5 * off * off } else { HUBER * off - 0.5 * HUBER * HUBER };
+            losses[blocks[row]] += huber((aligned.level_db[row] - form.level(&at, 0, x).level_db) / scale_db);
         }
     }
     losses

@@ -1,7 +1,7 @@
 //! Level against wind speed: quiet floor, slope, saturation onset, each with an honest interval or an honest "not resolved".
 //!
 //! The mean level of a band is `F + h(W(U) - F)`: a floor F, a wind part W that rises with the logarithm of the wind speed U
-//! up to an onset, and a corner h whose shape follows from how floor and wind part fluctuate. [`fit_site`] fits all bands of
+//! up to an onset, and a corner h whose shape follows from how floor and wind part fluctuate (or is hard). [`fit_site`] fits all bands of
 //! a site, [`fit_band`] one.
 
 mod ascent;
@@ -14,6 +14,7 @@ mod diagnostics;
 mod draws;
 mod fit;
 mod fits;
+mod hard_corner;
 mod lag;
 mod law;
 mod need;

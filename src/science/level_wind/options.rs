@@ -24,6 +24,8 @@ pub enum ScatterModel {
     Estimated,
     /// Floor and wind part add in power and do not fluctuate against each other.
     FixedPowerSum,
+    /// Floor and wind part do not add: the higher one counts. With [`Self::Estimated`] this competes, too.
+    HardCorner,
 }
 
 /// What may differ between deployments (or any other segments).

@@ -206,7 +206,7 @@ fn carried_scatter_widening(fit: &PointFit) -> f64 {
     const ALWAYS: f64 = 1.05;
     const WITH_SHIPS: f64 = 1.15;
     match summary::scatter_of(fit).family {
-        ScatterFamily::FixedPowerSum => 1.0,
+        ScatterFamily::FixedPowerSum | ScatterFamily::HardCorner => 1.0,
         ScatterFamily::TotalScatter | ScatterFamily::RandomFloor => ALWAYS,
         ScatterFamily::RandomFloorWithShips => WITH_SHIPS,
     }

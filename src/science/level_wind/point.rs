@@ -4,6 +4,7 @@ use super::ascent::Maximum;
 use super::corner::{CornerTable, Scatter};
 use super::dependence::{Side, block_length_samples, independent_storms, variance_inflation};
 use super::fits::{Band, Starts, grid};
+use super::hard_corner;
 use super::law::{Corner, Law, Parameters};
 use super::need;
 use super::options::{Loss, Options, ScatterModel, Segments};
@@ -40,6 +41,8 @@ pub(crate) struct PointFit {
     pub(crate) at: Parameters,
     pub(crate) scatter: Option<ScatterFit>,
     pub(crate) settled: Settled,
+    /// Whether the higher of floor and wind part counts instead of the sum of their powers.
+    pub(crate) hard_corner: bool,
     pub(crate) p_deployments: Option<f64>,
     /// Length of an independent block, hours.
     pub(crate) block_h: f64,
@@ -59,6 +62,11 @@ impl PointFit {
         fit.fit_scatter(scale_db, options);
         fit.measure_dependence();
         fit.choose_onsets();
+        if let Some(hard) = hard_corner::prefer(&fit, options) {
+            (fit.band, fit.at, fit.settled) = (hard.band, hard.at, hard.settled);
+            (fit.hard_corner, fit.scatter) = (true, None);
+            fit.measure_dependence();
+        }
         fit
     }
 
@@ -77,6 +85,7 @@ impl PointFit {
             segments: Segments::Pooled,
             level_db,
             table: CornerTable::plain(1.0),
+            hard_corner_rounding_db: None,
             least_floor_db: lowest - 20.0,
             onsets: grid(low, high, 40),
             record,
@@ -96,6 +105,7 @@ impl PointFit {
             at,
             scatter: None,
             settled,
+            hard_corner: false,
             p_deployments: None,
             block_h: 0.0,
             block_capped: false,
@@ -141,9 +151,7 @@ impl PointFit {
     /// Estimates the scatter model, and with it corner and weights, in two rounds.
     fn fit_scatter(&mut self, scale_db: f64, options: &Options) {
         let count = self.band.record.len();
-        if options.scatter == ScatterModel::FixedPowerSum
-            || scale_db <= NOISE_FREE_DB
-            || count < LEAST_SAMPLES_FOR_SCATTER
+        if options.scatter != ScatterModel::Estimated || scale_db <= NOISE_FREE_DB || count < LEAST_SAMPLES_FOR_SCATTER
         {
             return;
         }
@@ -305,7 +313,9 @@ pub(crate) fn onset_limits(record: &Record) -> (f64, f64) {
 /// The best maximum of a family over its starts.
 fn best_of(counts: &ResidualCounts, family: ScatterFamily, scale_db: f64) -> Maximum {
     let starts: &[[f64; PARAMETERS]] = match family {
-        ScatterFamily::FixedPowerSum | ScatterFamily::TotalScatter => &[[0.0, 0.0, 1.0, 0.0, 8.0, 0.01, 0.0, 0.0]],
+        ScatterFamily::FixedPowerSum | ScatterFamily::HardCorner | ScatterFamily::TotalScatter => {
+            &[[0.0, 0.0, 1.0, 0.0, 8.0, 0.01, 0.0, 0.0]]
+        }
         ScatterFamily::RandomFloor => &[
             [0.5, 0.3, 0.8, 0.0, 8.0, 0.01, 0.0, 0.0],
             [1.3, 0.7, 0.4, 0.0, 8.0, 0.01, 0.0, 0.0],

@@ -97,6 +97,13 @@ pub(crate) fn pseudo_values(
     values
 }
 
+/// Huber's loss of a residual in units of the scale.
+pub(crate) fn huber(residual: f64) -> f64 {
+    const LIMIT: f64 = 1.345;
+    let off = residual.abs();
+    if off < LIMIT { 0.5 * off * off } else { LIMIT * off - 0.5 * LIMIT * LIMIT }
+}
+
 /// Robust scale of the residuals of the levels, 1.4826 times their median absolute value (consistent for normal scatter),
 /// at least 0.1 dB.
 pub(crate) fn residual_scale_db(band: &Band, law: Law, corner: Corner, at: &Parameters) -> f64 {

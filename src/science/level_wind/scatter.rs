@@ -44,7 +44,7 @@ const SHIP_NODE_STRIDE: i32 = 3;
 /// Parameters that a family leaves free.
 pub(crate) fn free_parameters(family: ScatterFamily) -> &'static [usize] {
     match family {
-        ScatterFamily::FixedPowerSum | ScatterFamily::TotalScatter => {
+        ScatterFamily::FixedPowerSum | ScatterFamily::HardCorner | ScatterFamily::TotalScatter => {
             &[TOTAL_SD, OUTLIER_SHARE, FLOOR_SHIFT, WIND_SHIFT]
         }
         ScatterFamily::RandomFloor => &[FLOOR_SD, WIND_SD, TOTAL_SD, OUTLIER_SHARE, FLOOR_SHIFT, WIND_SHIFT],

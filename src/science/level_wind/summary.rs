@@ -101,7 +101,11 @@ pub(crate) fn scatter_of(fit: &PointFit) -> ScatterEstimate {
     let scatter = fit.band.table.scatter;
     let found = fit.scatter.as_ref();
     ScatterEstimate {
-        family: found.map_or(ScatterFamily::FixedPowerSum, |found| found.family),
+        family: match found {
+            Some(found) => found.family,
+            None if fit.hard_corner => ScatterFamily::HardCorner,
+            None => ScatterFamily::FixedPowerSum,
+        },
         floor_sd_db: scatter.floor_sd_db,
         wind_part_sd_db: scatter.wind_sd_db,
         total_sd_db: scatter.total_sd_db,

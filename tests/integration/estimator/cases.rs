@@ -3,7 +3,7 @@
 
 use serde_json::Value;
 use std::path::PathBuf;
-use underwind::model::{DeploymentDifference, Relation, Resolved, Verdict};
+use underwind::model::{DeploymentDifference, Relation, Resolved, ScatterFamily, Verdict};
 use underwind::science::level_wind::{Loss, Options, fit_band};
 
 pub(crate) struct Columns {
@@ -76,6 +76,18 @@ fn noise_free_floor_slope_and_onset_are_recovered() {
     let relation = fit("c01_exact_floor_log_sat", Loss::Tukey);
     assert_eq!(relation.verdict, Verdict::Saturation);
     check_floor_and_knee("c01_exact_floor_log_sat", &relation, &ALL);
+}
+
+#[test]
+fn a_noise_free_hard_corner_is_recovered() {
+    let name = "c03_exact_hinge";
+    let relation = fit(name, Loss::Tukey);
+    assert_eq!(relation.verdict, Verdict::Saturation);
+    assert_eq!(relation.scatter.unwrap().family, ScatterFamily::HardCorner);
+    check_floor_and_knee(name, &relation, &["floor_db", "slope_db_per_decade", "onset_m_s"]);
+    let [floor, wind, slope] = [relation.floor_db, relation.wind_component_at_10_m_s_db, relation.slope_db_per_decade]
+        .map(|v| v.estimate().unwrap());
+    check(name, "lower_break_m_s", 10.0_f64.powf(1.0 + (floor - wind) / slope));
 }
 
 #[test]

@@ -4,6 +4,7 @@ mod cases;
 mod edge_cases;
 mod further;
 mod independent;
+mod program_cases;
 mod properties;
 mod simulator;
 mod study;
