@@ -13,7 +13,14 @@ pub fn relation_text(fitted: &Fitted) -> String {
         }
         let first = &bands[0];
         let reference = first.kind.map_or(String::new(), |kind| format!("; levels in {}", kind.unit()));
-        out.push_str(&format!("site {}, sensor {}, wind {}{reference}\n", first.site, first.sensor, first.source));
+        // A table of pairs may name none of them.
+        let named = [("site", &first.site), ("sensor", &first.sensor), ("wind", &first.source.0)]
+            .iter()
+            .filter(|(_, name)| !name.is_empty())
+            .map(|(what, name)| format!("{what} {name}"))
+            .collect::<Vec<_>>();
+        let named = if named.is_empty() { "all pairs".to_owned() } else { named.join(", ") };
+        out.push_str(&format!("{named}{reference}\n"));
         out.push_str(&format!(
             "{:>9}  {:>22}  {:>22}  {:>6}  {}\n",
             "band", "floor (dB)", "slope (dB/decade)", "pairs", "onset of saturation"

@@ -168,7 +168,7 @@ fn law(fitted: &[FittedBand], study: &Study) -> String {
                 .map(|(wanted, count)| format!("{} in {count} of {} relations", wanted.name(), fitted.len()))
                 .collect();
             format!(
-                "{formula} The scatter of floor and wind part about their means, and passing ships added to the floor in power, bend the mean level near the crossover; a model of that scatter was fitted to the residuals, and the simplest one kept that the data do not reject; the higher of floor and wind part (hard corner) was taken instead of the sum only where it predicted held-out blocks of time better by two standard errors ({}).",
+                "{formula} The scatter of floor and wind part about their means, and passing ships added to the floor in power, bend the mean level near the crossover; a model of that scatter was fitted to the residuals, and the simplest one kept that the data do not reject; the higher of floor and wind part (hard corner) was taken instead of the sum only where it predicted held-out blocks of time clearly better ({}).",
                 counts.join(", ")
             )
         }

@@ -104,14 +104,14 @@ impl Folds {
     /// compared, with Huber's loss of the residuals in units of a scale.
     pub(crate) fn gain_of_corner(
         &self,
-        (from_band, from): (&Band, &Predictions),
-        (to_band, to): (&Band, &Predictions),
+        (from_band, from_law, from): (&Band, Law, &Predictions),
+        (to_band, to_law, to): (&Band, Law, &Predictions),
         scale_db: f64,
     ) -> f64 {
         let mut per_block = vec![0.0; self.cells.count];
-        let losses = |band: &Band, predictions: &Predictions| -> Vec<f64> {
+        let losses = |band: &Band, law: Law, predictions: &Predictions| -> Vec<f64> {
             let sharp = band.sharp_table(SHARP);
-            let form = Form { table: sharp.as_ref().unwrap_or(&band.table.h), ..band.form(Law::Knee, Corner::Floor) };
+            let form = Form { table: sharp.as_ref().unwrap_or(&band.table.h), ..band.form(law, Corner::Floor) };
             let form = form.at_points();
             let record = &band.record;
             (0..record.len())
@@ -122,7 +122,7 @@ impl Folds {
                 })
                 .collect()
         };
-        let (from, to) = (losses(from_band, from), losses(to_band, to));
+        let (from, to) = (losses(from_band, from_law, from), losses(to_band, to_law, to));
         for (sample, &block) in self.cells.of_sample.iter().enumerate() {
             per_block[block] += from[sample] - to[sample];
         }

@@ -20,10 +20,12 @@ pub(crate) struct Hard {
     pub(crate) settled: Settled,
 }
 
-/// The fit with a hard corner where it was asked for, or where it predicts held-out blocks better by two standard errors.
+/// The fit with a hard corner where it was asked for, or where it predicts held-out blocks clearly better.
 pub(crate) fn prefer(soft: &PointFit, options: &Options) -> Option<Hard> {
-    /// Gain from which the hard corner is taken, in standard errors.
-    const CLEAR: f64 = 2.0;
+    /// Gains over the sum of powers with a knee, a quadratic and a threshold law from which the hard corner is taken, in
+    /// standard errors. (Chosen on simulations: of 60 records of 8760 hours, 55 hard corners are found and none of 300 soft
+    /// ones is taken for hard.)
+    const LEAST_GAINS: [f64; 3] = [1.5, 0.5, 0.5];
     if options.scatter == ScatterModel::FixedPowerSum {
         return None;
     }
@@ -40,14 +42,34 @@ pub(crate) fn prefer(soft: &PointFit, options: &Options) -> Option<Hard> {
         return Some(hard);
     }
     let block_h = 2.0 * soft.block_h;
-    let [of_soft, of_hard] = [(&soft.band, &soft.at), (&hard.band, &hard.at)].map(|(band, at)| {
-        let fit = Fit { at: at.clone(), sum_squares: 0.0 };
-        (band, Folds::new(band, block_h).predictions(band, Law::Knee, Corner::Floor, &fit))
-    });
     let folds = Folds::new(&soft.band, block_h);
+    if folds.blocks() < LEAST_BLOCKS {
+        return None;
+    }
+    let predict =
+        |band: &Band, law: Law, fit: &Fit| Folds::new(band, block_h).predictions(band, law, Corner::Floor, fit);
+    let fit = Fit { at: hard.at.clone(), sum_squares: 0.0 };
+    let of_hard = predict(&hard.band, Law::Knee, &fit);
     let scale_db = residual_scale_db(&hard.band, Law::Knee, Corner::Floor, &hard.at);
-    let gain = folds.gain_of_corner((of_soft.0, &of_soft.1), (of_hard.0, &of_hard.1), scale_db);
-    (folds.blocks() >= LEAST_BLOCKS && gain > CLEAR).then_some(hard)
+    // A curve with a soft corner may look like a knee with a hard one: it must be worse as well.
+    let gains = [Law::Knee, Law::Quadratic, Law::Threshold].map(|law| {
+        let fit = match law {
+            Law::Knee => Fit { at: soft.at.clone(), sum_squares: 0.0 },
+            _ => soft.band.fit(law, Corner::Floor, &start_of(law, &soft.at), Starts::AndLine),
+        };
+        let of_soft = predict(&soft.band, law, &fit);
+        folds.gain_of_corner((&soft.band, law, &of_soft), (&hard.band, Law::Knee, &of_hard), scale_db)
+    });
+    let enough = gains.iter().zip(LEAST_GAINS).all(|(gain, least)| *gain > least);
+    enough.then_some(hard)
+}
+
+/// Where the search for a curved law begins.
+fn start_of(law: Law, knee: &Parameters) -> Parameters {
+    match law {
+        Law::Threshold => Parameters { slope: 20.0, bend: 1.0, ..knee.clone() },
+        _ => Parameters { bend: 0.0, ..knee.clone() },
+    }
 }
 
 /// The hinge found by exhaustive search, improved once: enough to see whether it is worth more.

@@ -159,6 +159,8 @@ proptest! {
         let scaled = Simulated { wind_m_s: wind_m_s.iter().map(|wind| wind * factor).collect(), ..simulated.clone() };
         let plain = fit(&Simulated { wind_m_s, ..simulated }, &options(0));
         let scaled = fit(&scaled, &options(0));
+        // A choice of the corner near its limit may fall either way: the threshold law's range is in m/s.
+        prop_assume!(plain.scatter.map(|scatter| scatter.family) == scaled.scatter.map(|scatter| scatter.family));
         let shift = estimate(plain.slope_db_per_decade) * factor.log10();
         prop_assert!((estimate(scaled.onset_m_s) / estimate(plain.onset_m_s) / factor - 1.0).abs() < 0.01);
         prop_assert!((estimate(scaled.slope_db_per_decade) - estimate(plain.slope_db_per_decade)).abs() < 0.02);
